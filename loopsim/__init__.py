@@ -1,0 +1,1 @@
+"""Block-diagram loop simulator with first-principles blocks."""

@@ -1,0 +1,1 @@
+"""Commands; one short function each."""

@@ -1,0 +1,1 @@
+"""Text files with line and column, read into blocks, plants, strategies and scenarios."""

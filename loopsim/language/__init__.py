@@ -1,0 +1,1 @@
+"""Units, expressions, dimensions, derivatives."""

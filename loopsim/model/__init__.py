@@ -1,0 +1,1 @@
+"""Blocks and wires made into one flat, ordered model; its operating point and its audit."""

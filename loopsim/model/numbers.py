@@ -1,0 +1,143 @@
+"""The law model evaluated with numbers: values of all names and their slopes by forward differentiation."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from loopsim.language.derivative import derivative
+from loopsim.language.evaluate import Table, evaluate
+from loopsim.language.tree import Call, Expression, Number, names_in, transform
+from loopsim.model.order import Loop, ordered
+from loopsim.model.types import Assignment, Model
+
+FloatArray = NDArray[np.float64]
+Slopes = dict[int, float]
+
+
+def relaxed(tree: Expression) -> Expression:
+    """A tree whose `clip` lets everything pass: what would be needed if nothing had a limit."""
+    return transform(tree, lambda node: node.arguments[0] if isinstance(node, Call) and node.function == "clip" else node)
+
+
+@dataclass(slots=True)
+class System:
+    """`rate(u) = 0` for the states and residuals of loops u of a law model.
+
+    `unknowns` are the names behind u: states first (`states` of them), then unknowns of loops.
+    `free_of_limits` takes the clips out.
+    """
+
+    model: Model
+    free_of_limits: bool = False
+    opened: frozenset[str] = frozenset()
+    unknowns: list[str] = field(default_factory=list)
+    states: int = 0
+    _steps: list[Assignment] = field(default_factory=list)
+    _rows: list[Expression] = field(default_factory=list)
+    _slopes: dict[Expression, list[tuple[str, Expression]]] = field(default_factory=dict)
+    _settled: dict[str, float | Table] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        change = relaxed if self.free_of_limits else (lambda tree: tree)
+        model = self.model
+        self.unknowns = list(model.states)
+        self.states = len(self.unknowns)
+        rows = [change(state.rate) for state in model.states.values()]
+        wanted = set(model.assignments) | set(model.implicits) | {n for row in rows for n in names_in(row)}
+        for step in ordered(model, wanted):
+            if isinstance(step, Loop):
+                self.unknowns += step.unknowns
+                self._steps += [self._changed(one, change) for one in step.inner]
+                rows += [change(one) for one in step.residuals]
+            elif isinstance(step, Assignment):
+                self._steps.append(self._changed(step, change))
+        self._rows = rows
+        self._settled = {name: slot.value for name, slot in model.slots.items()} | dict(model.tables)
+
+    def _changed(self, step: Assignment, change: object) -> Assignment:
+        tree = change(step.tree)  # type: ignore[operator]
+        return Assignment(step.name, step.tag, tree, step.where)
+
+    def values(self, u: FloatArray, slots: Mapping[str, float] | None = None) -> dict[str, float]:
+        """Every name's value at u (SI)."""
+        values: dict[str, float | Table] = dict(self._settled)
+        values.update(slots or {})
+        values.update(zip(self.unknowns, u.tolist(), strict=True))
+        for step in self._steps:
+            values[step.name] = float(evaluate(step.tree, values))
+        return values  # type: ignore[return-value]
+
+    def residuals(self, values: Mapping[str, float]) -> FloatArray:
+        """Rates of the states and residuals of the loops at these values."""
+        return np.array([float(evaluate(row, values)) for row in self._rows])
+
+    def jacobian(self, values: Mapping[str, float]) -> FloatArray:
+        """d residuals / d u, shape (n, n)."""
+        seeds = {name: {place: 1.0} for place, name in enumerate(self.unknowns)}
+        slopes = self.carried(values, seeds)
+        matrix = np.zeros((len(self._rows), len(self.unknowns)))
+        for row, tree in enumerate(self._rows):
+            for place, slope in self._total(tree, values, slopes).items():
+                matrix[row, place] = slope
+        return matrix
+
+    def carried(self, values: Mapping[str, float], seeds: dict[str, Slopes]) -> dict[str, Slopes]:
+        """Slopes of every name with respect to the seeded places, carried through all assignments."""
+        slopes = dict(seeds)
+        for step in self._steps:
+            if step.name in self.opened:
+                continue
+            total = self._total(step.tree, values, slopes)
+            if total:
+                slopes[step.name] = {**slopes.get(step.name, {}), **total}
+        return slopes
+
+    def rows_by(self, values: Mapping[str, float], slopes: dict[str, Slopes], columns: int) -> FloatArray:
+        """d residuals / d seeded places, shape (n, columns)."""
+        matrix = np.zeros((len(self._rows), columns))
+        for row, tree in enumerate(self._rows):
+            for place, slope in self._total(tree, values, slopes).items():
+                matrix[row, place] = slope
+        return matrix
+
+    def _total(self, tree: Expression, values: Mapping[str, float], slopes: dict[str, Slopes]) -> Slopes:
+        if tree not in self._slopes:
+            partials = [(name, derivative(tree, name)) for name in sorted(names_in(tree))]
+            self._slopes[tree] = [(name, one) for name, one in partials if one != Number(0.0)]
+        total: Slopes = {}
+        for name, partial in self._slopes[tree]:
+            below = slopes.get(name)
+            if not below:
+                continue
+            factor = float(evaluate(partial, values))
+            for place, slope in below.items():
+                total[place] = total.get(place, 0.0) + factor * slope
+        return total
+
+    def starts(self) -> FloatArray:
+        """Where the search begins: the starts of the states, evaluated as far as they can be told."""
+        u = np.zeros(len(self.unknowns))
+        for place, name in enumerate(self.unknowns):
+            u[place] = self._start(name)
+        return self._refined(u)
+
+    def _start(self, name: str) -> float:
+        found = self.model.states.get(name) or self.model.implicits.get(name)
+        return found.start.value if found is not None and isinstance(found.start, Number) else 0.0
+
+    def _refined(self, u: FloatArray) -> FloatArray:
+        """Starts that are formulas, from the values that the other starts give; a few rounds settle chains."""
+        for _ in range(20):
+            values = self.values(u)
+            before = u.copy()
+            for place, name in enumerate(self.unknowns):
+                found = self.model.states.get(name) or self.model.implicits.get(name)
+                if found is not None and names_in(found.start):
+                    u[place] = float(evaluate(found.start, values))
+            if np.array_equal(before, u, equal_nan=True):
+                break
+        return np.nan_to_num(u, nan=0.0, posinf=0.0, neginf=0.0)

@@ -1,0 +1,163 @@
+"""The operating point: plant and controllers at rest together."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from loopsim.errors import ComputationError, Problem
+from loopsim.language.tree import Name
+from loopsim.language.units import from_si
+from loopsim.model.numbers import FloatArray, System
+from loopsim.model.types import Controller, Model
+
+STEPS = 600
+GROWTH = 1.6  # of the step of the pseudo-transient, at the least
+LAST_STEP = 1e13  # s: from here on the pseudo-transient is Newton's method
+NO_LIMIT = 1e9  # controller limits when asking what would be needed
+
+
+@dataclass(frozen=True, slots=True)
+class Unreached:
+    """A set point that a limit keeps out of reach."""
+
+    controller: Controller
+    needed: float
+    reached: float
+    sentence: str
+
+
+@dataclass(frozen=True, slots=True)
+class OperatingPoint:
+    """Values at rest of every name [SI], whether the rest is stable (None: not told), and set points out of reach."""
+
+    values: dict[str, float]
+    unknowns: FloatArray
+    stable: bool | None
+    unreached: tuple[Unreached, ...]
+
+
+def rest(model: Model, guess: FloatArray | None = None) -> OperatingPoint:
+    """The operating point of a law model, from the starts of its states (or from `guess`).
+
+    Raises `ComputationError` where there is no rest, with the state that keeps moving.
+    """
+    system = System(model)
+    u = settled(system, system.starts() if guess is None else guess)
+    values = system.values(u)
+    return OperatingPoint(values, u, None, _unreached(model, values, u))
+
+
+def settled(system: System, u: FloatArray) -> FloatArray:
+    """Follow the plant to its rest by implicit steps that grow until they are Newton's."""
+    mass = np.array([1.0] * system.states + [0.0] * (len(u) - system.states))
+    if not len(u):
+        return u
+    step, values = 1.0, system.values(u)
+    residuals = system.residuals(values)
+    for _ in range(STEPS):
+        matrix = np.diag(mass / step) - system.jacobian(values)
+        move = _solved(matrix, residuals)
+        trial = u + move
+        new_values = system.values(trial)
+        new_residuals = system.residuals(new_values)
+        if not np.all(np.isfinite(new_residuals)) or not np.all(np.isfinite(move)):
+            step /= 8.0
+            if step < 1e-9:
+                break
+            continue
+        ratio = _size(residuals, u) / max(_size(new_residuals, trial), 1e-300)
+        done = step >= LAST_STEP and np.all(np.abs(move) <= 1e-12 * (np.abs(u) + 1e-6))
+        u, values, residuals = trial, new_values, new_residuals
+        if done or (not np.any(residuals) and step >= LAST_STEP):
+            return u
+        step = min(step * min(max(ratio, GROWTH), 10.0), LAST_STEP)
+    raise _no_rest(system, u, residuals)
+
+
+def _solved(matrix: FloatArray, right: FloatArray) -> FloatArray:
+    try:
+        return np.linalg.solve(matrix, right)
+    except np.linalg.LinAlgError:
+        return np.asarray(np.linalg.lstsq(matrix, right, rcond=None)[0])
+
+
+def _size(residuals: FloatArray, u: FloatArray) -> float:
+    return float(np.max(np.abs(residuals) / (np.abs(u) + 1e-3)))
+
+
+def _no_rest(system: System, u: FloatArray, residuals: FloatArray) -> ComputationError:
+    worst = int(np.argmax(np.abs(residuals) / (np.abs(u) + 1e-3)))
+    name = system.unknowns[worst]
+    state = system.model.states.get(name)
+    if state is None:
+        what = f"no steady state was found: the equation of '{name}' is not met"
+        return ComputationError([Problem(what, "try other starts, or `starts: given`", None)])
+    per_hour = residuals[worst] * 3600.0 / state.unit.factor
+    what = f"there is no steady state: '{name}' still moves by {per_hour:.4g} {state.unit.text} per hour"
+    if state.mapped:
+        what = f"there is no steady state: '{name}' switches for ever, as on-off and time-proportioned control do"
+    hint = "balance what comes in and goes out, or start the scenario with `starts: given`"
+    return ComputationError([Problem(what, hint, state.where)])
+
+
+# ---------------------------------------------------------------- limits
+def _unreached(model: Model, values: dict[str, float], u: FloatArray) -> tuple[Unreached, ...]:
+    """Controllers with integral action whose error does not vanish at rest: a limit holds them."""
+    found = []
+    for controller in model.controllers:
+        set_point = values.get(model.in_use.get(controller.sp, controller.sp))
+        measured = values.get(controller.pv)
+        if not controller.integral or set_point is None or measured is None or _is_manual(model, controller):
+            continue
+        span = _span(model, controller)
+        if abs(set_point - measured) > 1e-6 * span:
+            found.append(_explained(model, controller, measured, u))
+    return tuple(found)
+
+
+def _is_manual(model: Model, controller: Controller) -> bool:
+    slot = model.slots.get(f"{controller.tag}.mode")
+    return slot is not None and slot.choices[int(slot.value)] == "manual"
+
+
+def _span(model: Model, controller: Controller) -> float:
+    ends = [model.slots.get(f"{controller.tag}.range.{end}") for end in ("low", "high")]
+    return ends[1].value - ends[0].value if ends[0] is not None and ends[1] is not None else 1.0
+
+
+def _explained(model: Model, controller: Controller, measured: float, u: FloatArray) -> Unreached:
+    needed = _needed(model, controller, u)
+    driven = [one.tag for one in model.assignments.values() if one.tree == Name(controller.out) and one.tag != controller.tag]
+    actuator = sorted(driven)[0] if driven else controller.tag
+    unit = model.signals[controller.pv].unit if controller.pv in model.signals else None
+    reached = f"{from_si(measured, unit, model.air_pressure):.4g} {unit.text}" if unit else f"{measured:.6g}"
+    sentence = f"the most that {controller.pv} reaches is {reached}"
+    if np.isfinite(needed):
+        sentence = f"{actuator} would have to be at {100 * needed:.3g} %; " + sentence
+    return Unreached(controller, needed, measured, sentence)
+
+
+def _needed(model: Model, controller: Controller, u: FloatArray) -> float:
+    """The output that the set point would take if neither controllers nor valves had limits."""
+    slots = {
+        name: replace(slot, value=NO_LIMIT if name.endswith(".high") else -NO_LIMIT) if ".limits." in name else slot
+        for name, slot in model.slots.items()
+    }
+    system = System(replace(model, slots=slots), free_of_limits=True)
+    try:
+        return system.values(settled(system, u))[controller.out]
+    except ComputationError:
+        return float("nan")
+
+
+def eigenvalues(system: System, values: dict[str, float]) -> FloatArray:
+    """Eigenvalues [1/s] of the continuous states at a point, loops of algebra solved; complex, shape (states,)."""
+    matrix, count = system.jacobian(values), system.states
+    inner = matrix[:count, :count]
+    if matrix.shape[0] > count:
+        below = np.linalg.solve(matrix[count:, count:], matrix[count:, :count])
+        inner = inner - matrix[:count, count:] @ below
+    kept = [k for k, name in enumerate(system.unknowns[:count]) if not system.model.states[name].mapped]
+    return np.asarray(np.linalg.eigvals(inner[np.ix_(kept, kept)])) if kept else np.zeros(0)

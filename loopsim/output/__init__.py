@@ -1,0 +1,1 @@
+"""Tables, trends, pictures and test reports rendered from results."""

@@ -1,0 +1,1 @@
+"""Time runs: generated code, stepper, dead-time history, scans and events."""

@@ -1,0 +1,342 @@
+"""One strategy's run of a scenario: events in time, the engine between them, trends at the end."""
+
+from __future__ import annotations
+
+import heapq
+import math
+from collections.abc import Iterable
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from loopsim.documents.types import Condition as WrittenCondition
+from loopsim.documents.types import Event, Quantity, Scenario, Word
+from loopsim.errors import ComputationError, Problem, Problems, fail, nearest
+from loopsim.language.tree import Expression, Name, Number
+from loopsim.language.units import from_si
+from loopsim.model.rest import OperatingPoint
+from loopsim.model.scales import FALSE_WORDS, ON_OFF, TRUE_WORDS, si_value
+from loopsim.model.types import Bound, Model
+from loopsim.results import LogEntry, Pieces, Status, Trends
+from loopsim.simulation.actions import Action, Actions, Track, check_target, not_applicable, seconds, target_of
+from loopsim.simulation.analysis import Condition, Wishes
+from loopsim.simulation.bodies import Program
+from loopsim.simulation.generate import generate
+from loopsim.simulation.machine import Machine, Outcome, RunState, advance, boundary, build, start
+from loopsim.simulation.noise import draws
+from loopsim.simulation.starts import start_values
+
+
+@dataclass(frozen=True, slots=True)
+class Happened:
+    """An event that took place: which one of the scenario, when [s], and its target's values before and after."""
+
+    number: int
+    time: float
+    target: str
+    before: float
+    after: float
+
+
+@dataclass(frozen=True, slots=True)
+class RunResult:
+    """Trends of one strategy, what happened in it, and which events did not apply to it."""
+
+    trends: Trends
+    happened: tuple[Happened, ...]
+    not_applicable: frozenset[int]
+
+
+@dataclass(slots=True)
+class Simulation:
+    """A run that can be advanced: the model's program, its state, and what is still to come.
+
+    Only `state`, `tracks` and `pending` change.
+    """
+
+    model: Model
+    program: Program
+    machine: Machine
+    state: RunState
+    scenario: Scenario
+    lasts: float
+    actions: Actions
+    tracks: dict[str, Track] = field(default_factory=dict)
+    pending: list[tuple[float, int, int, Action | int]] = field(default_factory=list)
+    happened: list[Happened] = field(default_factory=list)
+    log: list[LogEntry] = field(default_factory=list)
+    waiting: dict[int, int] = field(default_factory=dict)
+    fired: set[int] = field(default_factory=set)
+    counter: int = 0
+
+
+def resolve(model: Model, name: str) -> str | None:
+    """The model's name behind what people write: a signal, a set point in use, a single element, a stored value."""
+    if name in model.in_use:
+        return model.in_use[name]
+    for items in (model.assignments, model.states, model.memory, model.slots, model.implicits):
+        if name in items:
+            return name
+    elements = [one for one in model.signals if one.startswith(f"{name}.")]
+    return elements[0] if len(elements) == 1 else None
+
+
+def prepare(
+    model: Model,
+    law: Model,
+    point: OperatingPoint | None,
+    scenario: Scenario,
+    judged: Iterable[str],
+    recorded: Iterable[str],
+    run: int = 0,
+) -> Simulation:
+    """A simulation at its first instant, events at t = 0 still to come."""
+    problems = Problems()
+    skipped = {k for k, event in enumerate(scenario.events) if not_applicable(event, model)}
+    for number, event in enumerate(scenario.events):
+        if number not in skipped:
+            check_target(event, model, problems)
+    problems.raise_if_any()
+    conditions, owners = _conditions(model, scenario, skipped)
+    moving = frozenset(
+        target_of(event)
+        for number, event in enumerate(scenario.events)
+        if event.kind in ("ramp", "sine", "follow") and number not in skipped
+    )
+    wishes = Wishes(tuple(judged), tuple(recorded), conditions, moving)
+    program = generate(model, wishes)
+    machine = build(program.text, model.name)
+    first = start_values(model, program, law, point)
+    machine.prepare(first.p)
+    lasts = seconds(scenario.lasts)
+    numbers = draws(model, first.p, program, machine, scenario.seed, run, lasts)
+    state = start(machine, first.x, first.m, first.p, z=numbers)
+    simulation = Simulation(model, program, machine, state, scenario, lasts, Actions(model, scenario.events))
+    simulation.waiting = owners
+    for number, event in enumerate(scenario.events):
+        if event.at is not None and number not in skipped:
+            _queue(simulation, simulation.actions.of(number, seconds(event.at)))
+            _queue_happening(simulation, number, seconds(event.at))
+    return simulation
+
+
+# ---------------------------------------------------------------- conditions
+def _conditions(
+    model: Model, scenario: Scenario, skipped: set[int]
+) -> tuple[tuple[Condition, ...], dict[int, int]]:
+    """Watched levels first, then the conditions of events; `owners` maps a condition's place to its event."""
+    found = [_bound_condition(bound) for bound in model.bounds]
+    owners: dict[int, int] = {}
+    for number, event in enumerate(scenario.events):
+        if event.when is not None and number not in skipped:
+            owners[len(found)] = number
+            found.append(_event_condition(model, event.when))
+    return tuple(found), owners
+
+
+def _bound_condition(bound: Bound) -> Condition:
+    """True once a watched level is passed."""
+    sides: tuple[Expression, Expression] = (Name(bound.signal), bound.limit)
+    if bound.relation in ("above", "at_least"):
+        sides = (sides[1], sides[0])
+    return Condition(*sides, bound.signal.rpartition(".")[0], bound.where)
+
+
+def _event_condition(model: Model, when: WrittenCondition) -> Condition:
+    name = resolve(model, when.signal)
+    if name is None:
+        raise fail(f"no signal is called '{when.signal}'", when.where, nearest(when.signal, model.signals))
+    unit = model.signals[when.signal].unit if when.signal in model.signals else ON_OFF
+    tag = when.signal.rpartition(".")[0]
+    if when.relation == "is":
+        return _word_condition(model, name, when, tag)
+    problems = Problems()
+    value: Quantity | Word = when.value
+    limit = Number(si_value(value, unit, problems, model.air_pressure, f"'{when.signal}'"))
+    problems.raise_if_any()
+    if when.relation == "below":
+        return Condition(limit, Name(name), tag, when.where)
+    return Condition(Name(name), limit, tag, when.where)
+
+
+def _word_condition(model: Model, name: str, when: WrittenCondition, tag: str) -> Condition:
+    word = getattr(when.value, "text", "")
+    if word in TRUE_WORDS:
+        return Condition(Name(name), Number(0.5), tag, when.where)
+    if word in FALSE_WORDS:
+        return Condition(Number(0.5), Name(name), tag, when.where)
+    raise fail(f"'{when.signal} is {word}': on or off is wanted", when.where, "settings cannot be waited for")
+
+
+# ---------------------------------------------------------------- events
+def _queue(simulation: Simulation, actions: Iterable[Action]) -> None:
+    for action in actions:
+        simulation.counter += 1
+        heapq.heappush(simulation.pending, (action.time, action.order, simulation.counter, action))
+
+
+def _queue_happening(simulation: Simulation, number: int, time: float) -> None:
+    """A mark among the pending actions: event `number` happens at this time."""
+    simulation.counter += 1
+    heapq.heappush(simulation.pending, (time, number, simulation.counter, number))
+
+
+def apply_due(simulation: Simulation, now: float) -> None:
+    """Carry out all actions of this instant, then let scans and switches follow."""
+    machine, state = simulation.machine, simulation.state
+    machine.settle(now, state.x, state.m, state.p, state.b, state.h, state.n, state.z)
+    before = {name: track.numbers()[0] for name, track in simulation.tracks.items()}
+    marks = []
+    while simulation.pending and simulation.pending[0][0] <= now + _tie(now):
+        _, _, _, entry = heapq.heappop(simulation.pending)
+        if isinstance(entry, int):
+            marks.append((entry, _target_value(simulation, entry, now)))
+        else:
+            _carry_out(simulation, entry, now)
+    del before
+    machine.prepare(state.p)
+    boundary(machine, state, event=True)
+    for number, old in marks:
+        event = simulation.scenario.events[number]
+        simulation.log.append(LogEntry(now, _sentence(event), event.target, event.where))
+        new = _target_value(simulation, number, now)
+        simulation.happened.append(Happened(number, now, target_of(event), old, new))
+
+
+def _tie(now: float) -> float:
+    return 1e-9 * max(1.0, abs(now))
+
+
+def _target_value(simulation: Simulation, number: int, now: float) -> float:
+    name = target_of(simulation.scenario.events[number])
+    if name in simulation.tracks:
+        numbers = simulation.tracks[name].numbers()
+        return numbers[0] + numbers[1] * (now - numbers[2])
+    slot = simulation.model.slots.get(name)
+    return slot.value if slot is not None else math.nan
+
+
+def _carry_out(simulation: Simulation, action: Action, now: float) -> None:
+    state, program = simulation.state, simulation.program
+    if action.change is not None:
+        slot = simulation.model.slots[action.target]
+        track = simulation.tracks.setdefault(action.target, Track(slot.value))
+        action.change(track, now)
+        numbers = track.numbers()
+        if action.target in program.motion:
+            place = program.motion[action.target]
+            state.p[place : place + 6] = list(numbers)
+        else:
+            state.p[program.parameters[action.target]] = numbers[0]
+    for name, value in action.writes:
+        if name in program.states:
+            state.x[program.states[name]] = value
+        else:
+            state.m[program.memory[name]] = value
+
+
+def _sentence(event: Event) -> str:
+    text = {"fault": f"fault {event.fault}", "mode": "mode"}.get(event.kind, event.kind)
+    value = getattr(event.to or event.by or event.times or event.size, "text", "")
+    return f"{text} {event.target} {value}".strip()
+
+
+# ---------------------------------------------------------------- the run
+def run(simulation: Simulation, every: float) -> RunResult:
+    """Advance to the end of the scenario; trends are recorded every `every` seconds."""
+    if not simulation.pending or simulation.pending[0][0] > 0:
+        _queue(simulation, [Action(0.0, -1, "", None)])
+    status = Status("done")
+    simulation.state.record_every = every
+    while status.code == "done":
+        now = simulation.state.t
+        if simulation.pending and simulation.pending[0][0] <= now + _tie(now):
+            apply_due(simulation, now)
+        if now >= simulation.lasts - _tie(now):
+            break
+        until = min(simulation.pending[0][0] if simulation.pending else math.inf, simulation.lasts)
+        outcome = advance(simulation.machine, simulation.state, until)
+        status = _outcome(simulation, outcome)
+    return _result(simulation, status)
+
+
+def _outcome(simulation: Simulation, outcome: Outcome) -> Status:
+    """What an advance ended with: nothing, a condition, or a run that stopped."""
+    if outcome.code == "reached":
+        if simulation.state.t >= simulation.lasts - _tie(simulation.lasts):
+            _finish(simulation)
+        return Status("done")
+    if outcome.code == "condition":
+        return _condition_turned(simulation, outcome)
+    return _stopped(simulation, outcome)
+
+
+def _finish(simulation: Simulation) -> None:
+    """The last instant: events and scans that fall on it."""
+    if not (simulation.pending and simulation.pending[0][0] <= simulation.lasts + _tie(simulation.lasts)):
+        boundary(simulation.machine, simulation.state, event=False)
+
+
+def _condition_turned(simulation: Simulation, outcome: Outcome) -> Status:
+    place = outcome.index - (len(simulation.program.switches) - len(simulation.program.conditions))
+    now = simulation.state.t
+    true = simulation.state.b[outcome.index] > 0.5
+    if place not in simulation.waiting:
+        return _bound_passed(simulation, place, now) if true else Status("done")
+    number = simulation.waiting[place]
+    event = simulation.scenario.events[number]
+    assert event.when is not None
+    if not true:
+        simulation.pending = [one for one in simulation.pending if one[1] != number or one[0] <= now]
+        heapq.heapify(simulation.pending)
+        return Status("done")
+    if event.when.once and number in simulation.fired:
+        return Status("done")
+    simulation.fired.add(number)
+    fires = now + (seconds(event.when.holds) if event.when.holds is not None else 0.0)
+    _queue(simulation, simulation.actions.of(number, fires))
+    _queue_happening(simulation, number, fires)
+    return Status("done")
+
+
+def _bound_passed(simulation: Simulation, place: int, now: float) -> Status:
+    bound = simulation.model.bounds[place]
+    words = {"above": "must stay above", "at_least": "must be at least", "below": "must stay below", "at_most": "must be at most"}
+    limit = getattr(bound.limit, "value", None)
+    unit = simulation.model.signals[bound.signal].unit if bound.signal in simulation.model.signals else None
+    shown = "its limit" if limit is None or unit is None else f"{from_si(limit, unit):.6g} {unit.text}"
+    sentence = f"'{bound.signal}' {words[bound.relation]} {shown}; it passed it"
+    return Status("stopped", sentence, now, bound.where)
+
+
+def _stopped(simulation: Simulation, outcome: Outcome) -> Status:
+    """A computation that cannot go on: which state or comparison, and where it is written."""
+    program, model = simulation.program, simulation.model
+    where, name = None, ""
+    if outcome.code in ("not_finite", "step_too_small") and 0 <= outcome.index < len(program.states):
+        name = list(program.states)[outcome.index]
+        where = model.states[name].where
+    elif outcome.code == "chatter":
+        switch = program.switches[outcome.index]
+        name, where = switch.tag, switch.where
+    sentence = f"{outcome.sentence}: '{name}'" if name else outcome.sentence
+    return Status("stopped", sentence, simulation.state.t, where)
+
+
+def _result(simulation: Simulation, status: Status) -> RunResult:
+    state, program, model = simulation.state, simulation.program, simulation.model
+    time, rows, starts, lengths, samples = state.trends()
+    columns = {name: rows[:, place] for place, name in enumerate(program.recorded)}
+    judged = [place for place, name in enumerate(program.watched) if not name.startswith("into ") and "#" not in name]
+    names = tuple(program.watched[place] for place in judged)
+    pieces = Pieces(names, starts, lengths, np.ascontiguousarray(samples[:, :, judged]))
+    units = {name: model.signals[name].unit for name in model.signals}
+    trends = Trends(time, columns, units, pieces, status, tuple(simulation.log), model.assumed, state.statistics())
+    skipped = frozenset(k for k, event in enumerate(simulation.scenario.events) if not_applicable(event, model))
+    return RunResult(trends, tuple(simulation.happened), skipped)
+
+
+def no_rest(error: ComputationError, strategy: str) -> Problem:
+    """The first problem of an operating point that could not be found, with the strategy it belongs to."""
+    first = error.problems[0]
+    return Problem(f"{strategy}: {first.what}", first.hint, first.where)

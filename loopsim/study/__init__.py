@@ -1,0 +1,1 @@
+"""Rules, verdicts, metrics and the comparison of strategies."""
