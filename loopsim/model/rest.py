@@ -44,9 +44,36 @@ def rest(model: Model, guess: FloatArray | None = None) -> OperatingPoint:
     Raises `ComputationError` where there is no rest, with the state that keeps moving.
     """
     system = System(model)
-    u = settled(system, system.starts() if guess is None else guess)
+    begin = system.starts() if guess is None else guess
+    wish = _wished(model, begin)
+    u = settled(system, begin if wish is None else wish.unknowns)
     values = system.values(u)
-    return OperatingPoint(values, u, None, _unreached(model, values, u))
+    return OperatingPoint(values, u, None, _unreached(model, values, wish))
+
+
+@dataclass(frozen=True, slots=True)
+class _Wish:
+    """The rest that would be if neither controllers nor valves had limits."""
+
+    unknowns: FloatArray
+    values: dict[str, float]
+
+
+def _wished(model: Model, begin: FloatArray) -> _Wish | None:
+    """Where the plant would rest without limits; None where that cannot be told.
+
+    The search starts here, because saturated controllers give a search no slope to follow.
+    """
+    slots = {
+        name: replace(slot, value=NO_LIMIT if name.endswith(".high") else -NO_LIMIT) if ".limits." in name else slot
+        for name, slot in model.slots.items()
+    }
+    system = System(replace(model, slots=slots), free_of_limits=True)
+    try:
+        u = settled(system, begin)
+    except ComputationError:
+        return None
+    return _Wish(u, system.values(u))
 
 
 def settled(system: System, u: FloatArray) -> FloatArray:
@@ -103,7 +130,7 @@ def _no_rest(system: System, u: FloatArray, residuals: FloatArray) -> Computatio
 
 
 # ---------------------------------------------------------------- limits
-def _unreached(model: Model, values: dict[str, float], u: FloatArray) -> tuple[Unreached, ...]:
+def _unreached(model: Model, values: dict[str, float], wish: _Wish | None) -> tuple[Unreached, ...]:
     """Controllers with integral action whose error does not vanish at rest: a limit holds them."""
     found = []
     for controller in model.controllers:
@@ -113,7 +140,7 @@ def _unreached(model: Model, values: dict[str, float], u: FloatArray) -> tuple[U
             continue
         span = _span(model, controller)
         if abs(set_point - measured) > 1e-6 * span:
-            found.append(_explained(model, controller, measured, u))
+            found.append(_explained(model, controller, measured, wish))
     return tuple(found)
 
 
@@ -127,8 +154,8 @@ def _span(model: Model, controller: Controller) -> float:
     return ends[1].value - ends[0].value if ends[0] is not None and ends[1] is not None else 1.0
 
 
-def _explained(model: Model, controller: Controller, measured: float, u: FloatArray) -> Unreached:
-    needed = _needed(model, controller, u)
+def _explained(model: Model, controller: Controller, measured: float, wish: _Wish | None) -> Unreached:
+    needed = wish.values[controller.out] if wish is not None else float("nan")
     driven = [one.tag for one in model.assignments.values() if one.tree == Name(controller.out) and one.tag != controller.tag]
     actuator = sorted(driven)[0] if driven else controller.tag
     unit = model.signals[controller.pv].unit if controller.pv in model.signals else None
@@ -137,19 +164,6 @@ def _explained(model: Model, controller: Controller, measured: float, u: FloatAr
     if np.isfinite(needed):
         sentence = f"{actuator} would have to be at {100 * needed:.3g} %; " + sentence
     return Unreached(controller, needed, measured, sentence)
-
-
-def _needed(model: Model, controller: Controller, u: FloatArray) -> float:
-    """The output that the set point would take if neither controllers nor valves had limits."""
-    slots = {
-        name: replace(slot, value=NO_LIMIT if name.endswith(".high") else -NO_LIMIT) if ".limits." in name else slot
-        for name, slot in model.slots.items()
-    }
-    system = System(replace(model, slots=slots), free_of_limits=True)
-    try:
-        return system.values(settled(system, u))[controller.out]
-    except ComputationError:
-        return float("nan")
 
 
 def eigenvalues(system: System, values: dict[str, float]) -> FloatArray:

@@ -6,7 +6,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass, replace
 
 from loopsim.errors import Where
-from loopsim.language.tree import Expression, parts
+from loopsim.language.tree import Expression, Name, parts
 from loopsim.model.order import Loop, Step, sorted_statements
 from loopsim.model.types import Assignment, DeadTime, Latch, Model, Noise, ScanLatch, ScanTask
 from loopsim.simulation.analysis import Analysis, Condition, Wishes
@@ -120,7 +120,8 @@ class Bodies:
 
     # ------------------------------------------------------------ reading and writing
     def read(self, name: str) -> str:
-        """The text that gives a name's value."""
+        """The text that gives a name's value; a name that only passes another on is read as that one."""
+        name = self.behind(name)
         if name in self.states:
             return f"x[{self.states[name]}]"
         if name in self.memory:
@@ -128,6 +129,12 @@ class Bodies:
         if name in self.parameters and name not in self.motion:
             return f"p[{self.parameters[name]}]"
         return self.identifiers.of(name)
+
+    def behind(self, name: str) -> str:
+        """The name that a chain of wires leads back to."""
+        while name in self.analysis.trees and isinstance(passed := self.analysis.trees[name], Name):
+            name = passed.name
+        return name
 
     def writer(self, sticky: bool = False) -> Writer:
         """A writer for one function."""
@@ -153,6 +160,8 @@ class Bodies:
     def step_lines(self, step: Step, writer: Writer) -> list[str]:
         """The lines of one step."""
         if isinstance(step, Assignment):
+            if self.behind(step.name) != step.name:
+                return []
             text = writer.value(self.analysis.trees[step.name])
             return [*writer.take(), f"{self.read(step.name)} = {text}  # {step.name}: {_place(step.where)}"]
         if isinstance(step, DeadTime):
