@@ -79,7 +79,7 @@ def _tolerant(part: Elaboration, step: str) -> None:
     try:
         getattr(part, step)()
     except Absent as absent:
-        if absent.name not in part.draft.absent or not part.draft.problems.found:
+        if absent.name not in part.draft.broken:
             part.draft.problems.add(
                 f"'{part.tag}' ({part.block.name}) needs '{absent.name}', which the plant leaves out",
                 part.where,
@@ -199,7 +199,7 @@ def _finished(draft: Draft) -> Model:
         if slot.kind in ("boundary", "input"):
             unit = layout.show_unit(slot.unit)
             draft.signals.setdefault(name, Signal(name, name.rpartition(".")[0], unit, slot.where, slot.about))
-    scans, notes = order_scans(draft.scans, draft.assignments)
+    scans, notes = order_scans(draft.scans, draft.assignments, draft.states)
     return Model(
         name=layout.name,
         law=draft.law,

@@ -40,7 +40,10 @@ class Absent(Exception):
 
 @dataclass(slots=True)
 class Draft:
-    """Collects the items of a model; `free` names what events may change (settings, parameters, inputs)."""
+    """Collects the items of a model; `free` names what events may change (settings, parameters, inputs).
+
+    `absent`: names that have no value in this plant; `broken`: those among them that are a mistake already told.
+    """
 
     layout: Layout
     elements: dict[str, Elements]
@@ -51,6 +54,7 @@ class Draft:
     law: bool
     free: frozenset[str]
     absent: set[str] = field(default_factory=set)
+    broken: set[str] = field(default_factory=set)
     slots: dict[str, Slot] = field(default_factory=dict)
     states: dict[str, State] = field(default_factory=dict)
     memory: dict[str, Memory] = field(default_factory=dict)

@@ -6,7 +6,7 @@ from loopsim.documents.types import Balance, Bounds, Formula, Given, Held, Outpu
 from loopsim.language.derivative import simplify
 from loopsim.language.tree import Expression, Name, Number, Operation, names_in
 from loopsim.model.balances import equations, solve_rates
-from loopsim.model.draft import Absent
+from loopsim.model.draft import INNER, Absent
 from loopsim.model.givens import Givens
 from loopsim.model.scales import si_value
 from loopsim.model.types import PRIME, Bound, Controller, ScanTask, Signal, State
@@ -99,8 +99,8 @@ class Elaboration(Givens):
                     self.scan_name(element, False)
                 else:
                     self.law_name(element)
-            except Absent:
-                self.draft.absent.add(flat)
+            except Absent as absent:
+                self.leave_out(flat, absent)
         for element in self.scanned:
             self._map(element)
 
@@ -111,10 +111,9 @@ class Elaboration(Givens):
         if assignment is None or not self._reaches(assignment.tree, flat, set()):
             return
         del self.draft.assignments[flat]
-        unit = self.draft.unit(flat, held.where) if held else self.draft.scales.of(flat)
+        unit = self.draft.unit(flat, held.where) if held else INNER
         rate = simplify(Operation("-", (assignment.tree, Name(flat))))
         rate = Number(0.0) if assignment.tree == Name(flat) else rate
-        assert unit is not None
         self.draft.states[flat] = State(flat, self.tag, unit, self.start_of(element), rate, assignment.where, True)
 
     def _reaches(self, tree: Expression, target: str, seen: set[str]) -> bool:
@@ -145,8 +144,8 @@ class Elaboration(Givens):
         flat = self.flat(element)
         try:
             self.element(element, False)
-        except Absent:
-            self.draft.absent.add(flat)
+        except Absent as absent:
+            self.leave_out(flat, absent)
             return
         unit = self.draft.layout.show_unit(self.draft.unit(flat, entry.where))
         self.draft.signals[flat] = Signal(flat, self.tag, unit, entry.where, entry.about)
@@ -188,8 +187,8 @@ class Elaboration(Givens):
         for element in self.scanned:
             try:
                 self.scan_name(element, True)
-            except Absent:
-                self.draft.absent.add(self.flat(element))
+            except Absent as absent:
+                self.leave_out(self.flat(element), absent)
         writes: list[tuple[str, Expression]] = [
             (self._store(element), Name(self.flat(element) + PRIME))
             for element in self.scanned

@@ -103,6 +103,7 @@ class Givens(Translator):
         self.draft.absent.add(flat)
         if parameter.optional:
             return
+        self.draft.broken.add(flat)
         self.draft.problems.add(
             f"'{self.tag}' ({self.block.name}) needs a value for '{parameter.key.name}'"
             + (f": {parameter.about}" if parameter.about else ""),
@@ -130,8 +131,14 @@ class Givens(Translator):
             if given:
                 self._refuse_absent(tree)
             self.draft.assign(flat, self.tag, tree, getattr(value, "where", where))
-        except Absent:
-            self.draft.absent.add(flat)
+        except Absent as absent:
+            self.leave_out(flat, absent)
+
+    def leave_out(self, flat: str, cause: Absent) -> None:
+        """Note that a name has no value here, and whether that is a mistake already told."""
+        self.draft.absent.add(flat)
+        if cause.name in self.draft.broken:
+            self.draft.broken.add(flat)
 
     def _names_something(self, value: Quantity | Word) -> bool:
         return isinstance(value, Word) and value.text in self.members
@@ -213,17 +220,21 @@ class Givens(Translator):
             del self.draft.wiring.drivers[flat]
             self._unconnected(flat, entry) if entry.default is None else self._default(flat, entry, "")
             return
+        self.draft.absent.add(flat)
+        if source in self.draft.broken:
+            self.draft.broken.add(flat)
+            return
         self.draft.problems.add(
             f"'{source}' has no value here, because an input that it needs is not wired",
             self.draft.wiring.drivers[flat].where,
             "wire that input first",
         )
-        self.draft.absent.add(flat)
 
     def _unconnected(self, flat: str, entry: Input) -> None:
         self.draft.absent.add(flat)
         if entry.optional:
             return
+        self.draft.broken.add(flat)
         about = f": {entry.about}" if entry.about else ""
         self.draft.problems.add(
             f"nothing drives the input '{flat}'{about}",

@@ -116,6 +116,8 @@ def _open(layout: Layout, tag: str, block: Block, library: Library, problems: Pr
         layout.wires.append(replace(wire, source=f"{tag}.{wire.source}", target=f"{tag}.{wire.target}"))
     for port, inside in block.ports.items():
         layout.ports[f"{tag}.{port}"] = f"{tag}.{inside}"
+        if port in layout.instances[tag].values:
+            set_value(layout, f"{tag}.{inside}", layout.instances[tag].values.pop(port), problems)
 
 
 def _passed(given: Given, tag: str, own: set[str]) -> Given:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Collection, Iterable, Mapping
 from dataclasses import dataclass
 
 import networkx as nx
@@ -137,9 +137,14 @@ _LOGICAL = ("and", "or", "not", "<", "<=", ">", ">=", "==", "!=")
 
 
 # ---------------------------------------------------------------- scans
-def order_scans(tasks: list[ScanTask], assignments: Mapping[str, Assignment]) -> tuple[list[ScanTask], list[str]]:
-    """Tasks with sources before users along the wires; a ring is cut at its first tag and reported."""
-    writers = {stored: task.tag for task in tasks for stored, _ in task.writes}
+def order_scans(
+    tasks: list[ScanTask], assignments: Mapping[str, Assignment], states: Collection[str]
+) -> tuple[list[ScanTask], list[str]]:
+    """Tasks with sources before users along the wires; a ring is cut at its first tag and reported.
+
+    A state does not jump with an execution, so reading one makes nobody a user.
+    """
+    writers = {stored: task.tag for task in tasks for stored, _ in task.writes if stored not in states}
     graph = nx.DiGraph()
     graph.add_nodes_from(sorted(task.tag for task in tasks))
     for task in tasks:

@@ -13,8 +13,10 @@ from loopsim.model.numbers import FloatArray, System
 from loopsim.model.types import Controller, Model
 
 STEPS = 600
-GROWTH = 1.6  # of the step of the pseudo-transient, at the least
-LAST_STEP = 1e13  # s: from here on the pseudo-transient is Newton's method
+NEWTON = 12
+GROWTH = 3.0  # of one step to the next
+LAST_STEP = 1e13  # s: from here on a step is Newton's method on the rates
+FARTHEST = 100.0  # times full output: beyond that the output has no hold on the measurement worth a number
 NO_LIMIT = 1e9  # controller limits when asking what would be needed
 
 
@@ -77,30 +79,52 @@ def _wished(model: Model, begin: FloatArray) -> _Wish | None:
 
 
 def settled(system: System, u: FloatArray) -> FloatArray:
-    """Follow the plant to its rest by implicit steps that grow until they are Newton's."""
-    mass = np.array([1.0] * system.states + [0.0] * (len(u) - system.states))
+    """Follow the plant to its rest by implicit Euler steps that grow until they are Newton's method on the rates."""
     if not len(u):
         return u
-    step, values = 1.0, system.values(u)
-    residuals = system.residuals(values)
+    mass = np.array([1.0] * system.states + [0.0] * (len(u) - system.states))
+    step = 1.0
     for _ in range(STEPS):
-        matrix = np.diag(mass / step) - system.jacobian(values)
-        move = _solved(matrix, residuals)
-        trial = u + move
-        new_values = system.values(trial)
-        new_residuals = system.residuals(new_values)
-        if not np.all(np.isfinite(new_residuals)) or not np.all(np.isfinite(move)):
+        trial = _implicit_step(system, u, mass / step)
+        if trial is None:
             step /= 8.0
             if step < 1e-9:
                 break
             continue
-        ratio = _size(residuals, u) / max(_size(new_residuals, trial), 1e-300)
-        done = step >= LAST_STEP and np.all(np.abs(move) <= 1e-12 * (np.abs(u) + 1e-6))
-        u, values, residuals = trial, new_values, new_residuals
-        if done or (not np.any(residuals) and step >= LAST_STEP):
+        still = bool(np.all(np.abs(trial - u) <= 1e-12 * (np.abs(u) + 1e-6)))
+        u = trial
+        if still and step >= LAST_STEP:
             return u
-        step = min(step * min(max(ratio, GROWTH), 10.0), LAST_STEP)
-    raise _no_rest(system, u, residuals)
+        step = min(step * GROWTH, LAST_STEP)
+    raise _no_rest(system, u, system.residuals(system.values(u)))
+
+
+def _implicit_step(system: System, u: FloatArray, inertia: FloatArray) -> FloatArray | None:
+    """Solve inertia * (new - u) = rate(new) by Newton's method with a line search; None where that fails.
+
+    The line search matters: a valve at its stroke speed gives no slope, and full steps would jump to and fro.
+    """
+    new, values = u, system.values(u)
+    gap = -system.residuals(values)
+    for _ in range(NEWTON):
+        move = -_solved(np.diag(inertia) - system.jacobian(values), gap)
+        if not np.all(np.isfinite(move)):
+            return None
+        share, before = 1.0, _size(gap, new, inertia)
+        while True:
+            trial = new + share * move
+            trial_values = system.values(trial)
+            trial_gap = inertia * (trial - u) - system.residuals(trial_values)
+            after = _size(trial_gap, trial, inertia)
+            if after < before or before == 0.0 or np.all(np.abs(share * move) <= 1e-13 * (np.abs(new) + 1e-6)):
+                break
+            share /= 2.0
+            if share < 1e-6:
+                return None
+        new, values, gap = trial, trial_values, trial_gap
+        if np.all(np.abs(share * move) <= 1e-11 * (np.abs(new) + 1e-6)):
+            return new
+    return None
 
 
 def _solved(matrix: FloatArray, right: FloatArray) -> FloatArray:
@@ -110,8 +134,10 @@ def _solved(matrix: FloatArray, right: FloatArray) -> FloatArray:
         return np.asarray(np.linalg.lstsq(matrix, right, rcond=None)[0])
 
 
-def _size(residuals: FloatArray, u: FloatArray) -> float:
-    return float(np.max(np.abs(residuals) / (np.abs(u) + 1e-3)))
+def _size(gap: FloatArray, u: FloatArray, inertia: FloatArray) -> float:
+    scale = (np.abs(u) + 1e-3) * np.where(inertia > 0, inertia, 1.0)
+    size = float(np.max(np.abs(gap) / scale))
+    return size if np.isfinite(size) else np.inf
 
 
 def _no_rest(system: System, u: FloatArray, residuals: FloatArray) -> ComputationError:
@@ -161,7 +187,7 @@ def _explained(model: Model, controller: Controller, measured: float, wish: _Wis
     unit = model.signals[controller.pv].unit if controller.pv in model.signals else None
     reached = f"{from_si(measured, unit, model.air_pressure):.4g} {unit.text}" if unit else f"{measured:.6g}"
     sentence = f"the most that {controller.pv} reaches is {reached}"
-    if np.isfinite(needed):
+    if abs(needed) <= FARTHEST:
         sentence = f"{actuator} would have to be at {100 * needed:.3g} %; " + sentence
     return Unreached(controller, needed, measured, sentence)
 
