@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
+from functools import partial
 from pathlib import Path
 from typing import TypeVar
 
@@ -158,9 +159,6 @@ class Fields:
     def __contains__(self, key: str) -> bool:
         return key in self.node.entries
 
-    def __iter__(self) -> Iterator[Entry]:
-        return iter(self.node)
-
     def place(self, key: str) -> Where:
         """Where a key stands; the mapping itself when it is absent."""
         entry = self.node.entries.get(key)
@@ -169,7 +167,7 @@ class Fields:
     def read(self, key: str, reader: Callable[[Node], T]) -> T | None:
         """What a key holds, read by `reader`; None when it is absent or wrong (then noted)."""
         node = self.node.get(key)
-        return None if node is None else self.attempt(lambda: reader(node))
+        return None if node is None else self.attempt(partial(reader, node))
 
     def attempt(self, reading: Callable[[], T]) -> T | None:
         """The result of a reading; None when it fails (then noted)."""
@@ -188,11 +186,11 @@ class Fields:
     def every(self, key: str, reader: Callable[[Node], T | None]) -> tuple[T, ...]:
         """The items of a list, those that are wrong left out (then noted)."""
         nodes = self.read(key, lambda node: items(node, f"'{key}'")) or ()
-        read = (self.attempt(lambda node=node: reader(node)) for node in nodes)  # type: ignore[misc]
+        read = (self.attempt(partial(reader, node)) for node in nodes)
         return tuple(one for one in read if one is not None)
 
     def named(self, key: str, reader: Callable[[Entry], tuple[str, T]]) -> dict[str, T]:
         """The entries of a mapping by name, those that are wrong left out (then noted)."""
         node = self.read(key, lambda node: mapping(node, f"'{key}'"))
-        read = (self.attempt(lambda entry=entry: reader(entry)) for entry in node or ())  # type: ignore[misc]
+        read = (self.attempt(partial(reader, entry)) for entry in node or ())
         return dict(pair for pair in read if pair is not None)

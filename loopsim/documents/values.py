@@ -9,6 +9,7 @@ import itertools
 import math
 import re
 from collections.abc import Callable
+from functools import partial
 
 from loopsim.documents.fields import Fields, items, leading_zero, name, scalar, sentence, yes_no
 from loopsim.documents.nodes import Mapping, Node, Scalar, Sequence
@@ -223,7 +224,7 @@ def _given(node: Node, value: Callable[[Node], Value]) -> Given:
     assumed, about = bool(fields.read("assumed", yes_no)), fields.read("about", sentence) or ""
     for spread in (tolerance, deviation):
         if spread is not None and read is not None:
-            fields.attempt(lambda spread=spread: _check_spread(read, spread))  # type: ignore[misc]
+            fields.attempt(partial(_check_spread, read, spread))
     if tolerance and deviation:
         problems.add("a value has a tolerance or a deviation, not both", fields.place("deviation"))
     problems.raise_if_any()

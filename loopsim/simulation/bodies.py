@@ -6,7 +6,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass, replace
 
 from loopsim.errors import Where
-from loopsim.language.tree import Expression, Name, parts
+from loopsim.language.tree import Expression, Name, names_in, parts
 from loopsim.model.order import Loop, Step, sorted_statements
 from loopsim.model.types import Assignment, DeadTime, Latch, Model, Noise, ScanLatch, ScanTask
 from loopsim.simulation.analysis import Analysis, Condition, Wishes
@@ -105,6 +105,17 @@ class Bodies:
 
     def _lag(self, dead_time: DeadTime) -> Expression:
         return self.analysis.readied(dead_time.lag, dead_time.tag, dead_time.where)
+
+    def lags_may_change(self) -> bool:
+        """Whether a dead time may grow in a run, so that its history must be kept whole."""
+        pending = [name for one in self.model.dead_times.values() for name in names_in(one.lag)]
+        while pending:
+            name = pending.pop()
+            if name in self.model.free or not self.analysis.is_settled(name):
+                return True
+            if name in self.model.assignments:
+                pending += names_in(self.model.assignments[name].tree)
+        return False
 
     def _latch(self, latch: Latch) -> tuple[Expression, Expression | None]:
         condition = self.analysis.switches.apply(latch.condition, latch.tag, latch.where)

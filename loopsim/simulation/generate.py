@@ -70,6 +70,7 @@ def _constants(bodies: Bodies) -> str:
         "NC": len(bodies.model.scans),
         "NQ": len(bodies.wishes.conditions),
         "NZ": len(bodies.noises),
+        "KEEP": int(bodies.lags_may_change()),
     }
     return "\n".join(f"{name} = {number}" for name, number in numbers.items()) + "\n\n"
 

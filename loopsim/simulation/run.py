@@ -4,14 +4,14 @@ from __future__ import annotations
 
 import heapq
 import math
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 
 import numpy as np
 
 from loopsim.documents.types import Condition as WrittenCondition
 from loopsim.documents.types import Event, Quantity, Scenario, Word
-from loopsim.errors import ComputationError, Problem, Problems, fail, nearest
+from loopsim.errors import Problems, fail, nearest
 from loopsim.language.tree import Expression, Name, Number
 from loopsim.language.units import from_si
 from loopsim.model.rest import OperatingPoint
@@ -23,8 +23,14 @@ from loopsim.simulation.analysis import Condition, Wishes
 from loopsim.simulation.bodies import Program
 from loopsim.simulation.generate import generate
 from loopsim.simulation.machine import Machine, Outcome, RunState, advance, boundary, build, start
+from loopsim.simulation.machine import trends as trends_of
 from loopsim.simulation.noise import draws
 from loopsim.simulation.starts import start_values
+
+
+MARK = "mark"  # among the pending: an event happens, to be noted
+ARMED = "armed"  # among the pending: a condition has held long enough once this time comes
+CROWD = 1000  # conditions may start each other this often in one instant
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,12 +67,17 @@ class Simulation:
     scenario: Scenario
     lasts: float
     actions: Actions
+    judged: dict[str, str]
+    recorded: tuple[str, ...]
     tracks: dict[str, Track] = field(default_factory=dict)
-    pending: list[tuple[float, int, int, Action | int]] = field(default_factory=list)
+    pending: list[tuple[float, int, int, Action | str]] = field(default_factory=list)
     happened: list[Happened] = field(default_factory=list)
     log: list[LogEntry] = field(default_factory=list)
     waiting: dict[int, int] = field(default_factory=dict)
+    held: list[bool] = field(default_factory=list)
+    armed: set[int] = field(default_factory=set)
     fired: set[int] = field(default_factory=set)
+    crowd: int = 0
     counter: int = 0
 
 
@@ -86,11 +97,14 @@ def prepare(
     law: Model,
     point: OperatingPoint | None,
     scenario: Scenario,
-    judged: Iterable[str],
-    recorded: Iterable[str],
+    judged: Mapping[str, str],
+    recorded: Mapping[str, str],
     run: int = 0,
 ) -> Simulation:
-    """A simulation at its first instant, events at t = 0 still to come."""
+    """A simulation at its first instant, events at t = 0 still to come.
+
+    `judged` and `recorded` map the names that people read to the model's names.
+    """
     problems = Problems()
     skipped = {k for k, event in enumerate(scenario.events) if not_applicable(event, model)}
     for number, event in enumerate(scenario.events):
@@ -103,20 +117,22 @@ def prepare(
         for number, event in enumerate(scenario.events)
         if event.kind in ("ramp", "sine", "follow") and number not in skipped
     )
-    wishes = Wishes(tuple(judged), tuple(recorded), conditions, moving)
+    wishes = Wishes(tuple(dict.fromkeys(judged.values())), tuple(recorded.values()), conditions, moving)
     program = generate(model, wishes)
     machine = build(program.text, model.name)
     first = start_values(model, program, law, point)
     machine.prepare(first.p)
     lasts = seconds(scenario.lasts)
     numbers = draws(model, first.p, program, machine, scenario.seed, run, lasts)
-    state = start(machine, first.x, first.m, first.p, z=numbers)
-    simulation = Simulation(model, program, machine, state, scenario, lasts, Actions(model, scenario.events))
+    state = start(machine, first.x, first.m, first.p, numbers, first.floors, program.starts)
+    actions = Actions(model, scenario.events)
+    simulation = Simulation(model, program, machine, state, scenario, lasts, actions, dict(judged), tuple(recorded))
     simulation.waiting = owners
+    simulation.held = [False] * len(conditions)
     for number, event in enumerate(scenario.events):
         if event.at is not None and number not in skipped:
-            _queue(simulation, simulation.actions.of(number, seconds(event.at)))
             _queue_happening(simulation, number, seconds(event.at))
+            _queue(simulation, simulation.actions.of(number, seconds(event.at)))
     return simulation
 
 
@@ -178,22 +194,24 @@ def _queue(simulation: Simulation, actions: Iterable[Action]) -> None:
 def _queue_happening(simulation: Simulation, number: int, time: float) -> None:
     """A mark among the pending actions: event `number` happens at this time."""
     simulation.counter += 1
-    heapq.heappush(simulation.pending, (time, number, simulation.counter, number))
+    heapq.heappush(simulation.pending, (time, number, simulation.counter, MARK))
 
 
 def apply_due(simulation: Simulation, now: float) -> None:
     """Carry out all actions of this instant, then let scans and switches follow."""
     machine, state = simulation.machine, simulation.state
     machine.settle(now, state.x, state.m, state.p, state.b, state.h, state.n, state.z)
-    before = {name: track.numbers()[0] for name, track in simulation.tracks.items()}
     marks = []
     while simulation.pending and simulation.pending[0][0] <= now + _tie(now):
-        _, _, _, entry = heapq.heappop(simulation.pending)
-        if isinstance(entry, int):
-            marks.append((entry, _target_value(simulation, entry, now)))
-        else:
+        _, number, _, entry = heapq.heappop(simulation.pending)
+        if entry is ARMED:
+            simulation.fired.add(number)
+            _queue_happening(simulation, number, now)
+            _queue(simulation, simulation.actions.of(number, now))
+        elif isinstance(entry, Action):
             _carry_out(simulation, entry, now)
-    del before
+        else:
+            marks.append((number, _target_value(simulation, number, now)))
     machine.prepare(state.p)
     boundary(machine, state, event=True)
     for number, old in marks:
@@ -252,6 +270,12 @@ def run(simulation: Simulation, every: float) -> RunResult:
         now = simulation.state.t
         if simulation.pending and simulation.pending[0][0] <= now + _tie(now):
             apply_due(simulation, now)
+            status = conditions_turned(simulation)
+            simulation.crowd += 1
+            if simulation.crowd > CROWD:
+                status = Status("stopped", "events start each other for ever in one instant", now)
+            continue
+        simulation.crowd = 0
         if now >= simulation.lasts - _tie(now):
             break
         until = min(simulation.pending[0][0] if simulation.pending else math.inf, simulation.lasts)
@@ -261,42 +285,49 @@ def run(simulation: Simulation, every: float) -> RunResult:
 
 
 def _outcome(simulation: Simulation, outcome: Outcome) -> Status:
-    """What an advance ended with: nothing, a condition, or a run that stopped."""
-    if outcome.code == "reached":
-        if simulation.state.t >= simulation.lasts - _tie(simulation.lasts):
-            _finish(simulation)
-        return Status("done")
-    if outcome.code == "condition":
-        return _condition_turned(simulation, outcome)
-    return _stopped(simulation, outcome)
+    """What an advance ended with: nothing, conditions that turned, or a run that stopped."""
+    if outcome.code not in ("reached", "condition"):
+        return _stopped(simulation, outcome)
+    if outcome.code == "reached" and simulation.state.t >= simulation.lasts - _tie(simulation.lasts):
+        _finish(simulation)
+    return conditions_turned(simulation)
 
 
 def _finish(simulation: Simulation) -> None:
-    """The last instant: events and scans that fall on it."""
+    """The last instant: scans that fall on it, where no event does."""
     if not (simulation.pending and simulation.pending[0][0] <= simulation.lasts + _tie(simulation.lasts)):
         boundary(simulation.machine, simulation.state, event=False)
 
 
-def _condition_turned(simulation: Simulation, outcome: Outcome) -> Status:
-    place = outcome.index - (len(simulation.program.switches) - len(simulation.program.conditions))
-    now = simulation.state.t
-    true = simulation.state.b[outcome.index] > 0.5
-    if place not in simulation.waiting:
-        return _bound_passed(simulation, place, now) if true else Status("done")
-    number = simulation.waiting[place]
-    event = simulation.scenario.events[number]
+def conditions_turned(simulation: Simulation) -> Status:
+    """Queue or take back the events whose conditions have turned; stop where a watched level was passed."""
+    first = len(simulation.program.switches) - len(simulation.program.conditions)
+    for place, before in enumerate(simulation.held):
+        true = simulation.state.b[first + place] > 0.5
+        if true == before:
+            continue
+        simulation.held[place] = true
+        if place in simulation.waiting:
+            _turned(simulation, simulation.waiting[place], true)
+        elif true:
+            return _bound_passed(simulation, place, simulation.state.t)
+    return Status("done")
+
+
+def _turned(simulation: Simulation, number: int, true: bool) -> None:
+    event, now = simulation.scenario.events[number], simulation.state.t
     assert event.when is not None
     if not true:
-        simulation.pending = [one for one in simulation.pending if one[1] != number or one[0] <= now]
+        late = [one for one in simulation.pending if one[1] == number and one[0] > now and one[2] in simulation.armed]
+        simulation.pending = [one for one in simulation.pending if one not in late]
         heapq.heapify(simulation.pending)
-        return Status("done")
+        return
     if event.when.once and number in simulation.fired:
-        return Status("done")
-    simulation.fired.add(number)
-    fires = now + (seconds(event.when.holds) if event.when.holds is not None else 0.0)
-    _queue(simulation, simulation.actions.of(number, fires))
-    _queue_happening(simulation, number, fires)
-    return Status("done")
+        return
+    holds = seconds(event.when.holds) if event.when.holds is not None else 0.0
+    simulation.counter += 1
+    simulation.armed.add(simulation.counter)
+    heapq.heappush(simulation.pending, (now + holds, number, simulation.counter, ARMED))
 
 
 def _bound_passed(simulation: Simulation, place: int, now: float) -> Status:
@@ -325,18 +356,11 @@ def _stopped(simulation: Simulation, outcome: Outcome) -> Status:
 
 def _result(simulation: Simulation, status: Status) -> RunResult:
     state, program, model = simulation.state, simulation.program, simulation.model
-    time, rows, starts, lengths, samples = state.trends()
-    columns = {name: rows[:, place] for place, name in enumerate(program.recorded)}
-    judged = [place for place, name in enumerate(program.watched) if not name.startswith("into ") and "#" not in name]
-    names = tuple(program.watched[place] for place in judged)
-    pieces = Pieces(names, starts, lengths, np.ascontiguousarray(samples[:, :, judged]))
+    time, rows, starts, lengths, samples = trends_of(simulation.machine, state)
+    columns = {name: rows[:, place] for place, name in enumerate(simulation.recorded)}
+    places = [program.watched.index(flat) for flat in simulation.judged.values()]
+    pieces = Pieces(tuple(simulation.judged), starts, lengths, np.ascontiguousarray(samples[:, :, places]))
     units = {name: model.signals[name].unit for name in model.signals}
     trends = Trends(time, columns, units, pieces, status, tuple(simulation.log), model.assumed, state.statistics())
     skipped = frozenset(k for k, event in enumerate(simulation.scenario.events) if not_applicable(event, model))
     return RunResult(trends, tuple(simulation.happened), skipped)
-
-
-def no_rest(error: ComputationError, strategy: str) -> Problem:
-    """The first problem of an operating point that could not be found, with the strategy it belongs to."""
-    first = error.problems[0]
-    return Problem(f"{strategy}: {first.what}", first.hint, first.where)

@@ -17,11 +17,12 @@ from loopsim.simulation.bodies import Program
 
 @dataclass(frozen=True, slots=True)
 class Start:
-    """The arrays x, m, p of a run at its first instant."""
+    """The arrays x, m, p of a run at its first instant, and the size below which changes of a state do not matter."""
 
     x: list[float]
     m: list[float]
     p: list[float]
+    floors: list[float]
 
 
 def start_values(model: Model, program: Program, law: Model, point: OperatingPoint | None) -> Start:
@@ -43,7 +44,17 @@ def start_values(model: Model, program: Program, law: Model, point: OperatingPoi
         p[program.parameters[name]] = slot.value
     for name, place in program.motion.items():
         p[place : place + 6] = [model.slots[name].value, 0.0, 0.0, 0.0, 1.0, 0.0]
-    return Start(x, m, p)
+    return Start(x, m, p, [_floor(model, name, values) for name in program.states])
+
+
+def _floor(model: Model, name: str, values: Mapping[str, float]) -> float:
+    """1 K, 1 % of full scale for shares, 1 % of the start, or a thousandth of the unit, whichever is larger."""
+    unit = model.states[name].unit
+    if not unit.dimension.powers:
+        return 0.01
+    if unit.point or unit.text == "K":
+        return unit.factor if unit.text in ("degC", "K") else 1000.0
+    return max(0.01 * abs(values[name]), 1e-3 * unit.factor)
 
 
 def _state(

@@ -11,8 +11,8 @@ instant the outer executes first. Written law (reference_controller) and what go
 An output within 1e-9 of a limit counts as standing at it: holding the integral at the limit leaves rounding in the sum.
 Events lie between scans: by the next scan of TIC-1, FIC-1 has executed in its new mode.
 
-Trust: valve position by formula, the rest by DOP853 restarted at every scan and at every change between stroke speed
-and lag; the whole run at rtol 1e-12 against 1e-10 and against 1e-13. Asserted: the limit is met; no step at any transfer.
+Trust: valve position by formula, the rest by DOP853 restarted at every scan, tabulated instant and change between
+stroke speed and lag; the whole run at rtol 1e-12 against 1e-13. Asserted: the limit is met and never nearly met; no step at a transfer.
 """
 
 from __future__ import annotations
@@ -30,9 +30,9 @@ LAG_F, LAG_T = 1.0, 15.0
 SPAN_T, SPAN_F = 100.0, Q_MAX  # 0 to 100 degC, 0 to 5 m^3/h
 INNER_SCAN, OUTER_SCAN, END, EVERY = 2.0, 10.0, 3600.0, 5.0
 FEEDS = [(0.0, 12.0), (1207.0, 15.0)]  # from [s], feed [degC]
-SET_POINTS = [(0.0, 40.0), (100.0, 30.0)]
+SET_POINTS = [(0.0, 40.0), (100.0, 25.0), (407.0, 33.0)]
 MODES = [(0.0, "cascade"), (1501.5, "manual"), (2101.5, "cascade"), (2701.5, "auto"), (3001.5, "cascade")]
-MANUAL_OUTPUT, OWN_SET_POINT = 0.45, 2.0 / 5.0
+MANUAL_OUTPUT, OWN_SET_POINT = 0.50, 2.5 / 5.0
 
 
 def latest(steps: list[tuple[float, float]], time: float) -> float:
@@ -53,11 +53,10 @@ class Run:
     def advance(self, begin: float, end: float, feed: float, wanted: list[float]) -> None:
         """Move the plant on with the valve signal held, noting (T, F, M, position) at the wanted instants."""
         while begin < end:
-            gap, speed = self.signal - self.position, 0.0
-            until = end
-            if abs(gap) > POSITIONER / STROKE * (1.0 + 1e-14):
-                speed = math.copysign(1.0 / STROKE, gap)
-                until = min(end, begin + (abs(gap) - POSITIONER / STROKE) * STROKE)
+            gap, speed, until = self.signal - self.position, 0.0, end
+            limited = (abs(gap) - POSITIONER / STROKE) * STROKE
+            if limited > 1e-12:
+                speed, until = math.copysign(1.0 / STROKE, gap), min(end, begin + limited)
             self._smooth(begin, until, speed, feed, wanted)
             begin = until
 
@@ -87,7 +86,7 @@ class Loops:
     def __init__(self, flow: float) -> None:
         self.outer = Controller(4.0, 300.0, output=flow, I=flow, sign=-1.0)
         self.inner = Controller(0.4, 5.0, output=flow, I=flow, high=0.7)
-        self.mode, self.set_point = "cascade", flow
+        self.mode, self.mode_before, self.set_point = "cascade", "cascade", flow
         self.listens, self.may_rise, self.may_fall = True, True, True
         self.at_limit = 0
 
@@ -108,29 +107,18 @@ class Loops:
         if self.mode == "cascade":
             self.set_point = self.outer.output
         self.inner.manual = self.mode == "manual"
-        before, self.listens_before = self.inner.output, self.listens
-        if self.mode != self._last_mode:
-            self._bumpless(self.set_point, flow)
+        before = self.inner.output
+        if self.mode != self.mode_before:
+            self.inner.I = self.inner.output - self.inner.gain * (self.set_point - flow)
         self.inner.scan(INNER_SCAN, self.set_point, flow)
-        self._check_transfer(time, before)
-        self.listens = self.mode == "cascade"
+        if self.mode != self.mode_before and abs(self.inner.output - before) > self.inner.gain * INNER_SCAN / 5.0:
+            raise ArithmeticError(f"{time} s: the output steps at a transfer")
+        self.mode_before, self.listens = self.mode, self.mode == "cascade"
         self.may_rise = self.inner.output < self.inner.high - 1e-9
         self.may_fall = self.inner.output > self.inner.low + 1e-9
         self.at_limit += not self.may_rise
-
-    _last_mode = "cascade"
-
-    def _bumpless(self, set_point: float, flow: float) -> None:
-        """A change of mode that is not to or from manual (cascade, auto) sets the integral too."""
-        self.inner.I = self.inner.output - self.inner.gain * (set_point - flow)
-
-    def _check_transfer(self, time: float, before: float) -> None:
-        if self.mode != self._last_mode:
-            step = abs(self.inner.output - before)
-            integral = abs(self.inner.gain * INNER_SCAN / self.inner.integral)  # type: ignore[operator]
-            if step > integral:
-                raise ArithmeticError(f"{time} s: the output steps by {step} at a transfer")
-        self._last_mode = self.mode
+        if self.may_rise and self.inner.output > self.inner.high - 1e-3:
+            raise ArithmeticError(f"{time} s: whether the output stands at its limit hangs on a small difference")
 
 
 def run(rtol: float) -> tuple[Run, dict[float, tuple[float, float]]]:
@@ -141,8 +129,7 @@ def run(rtol: float) -> tuple[Run, dict[float, tuple[float, float]]]:
     plant, loops = Run(rtol, [rest, flow, rest], flow, flow), Loops(flow)
     outputs: dict[float, tuple[float, float]] = {}
     scans = [number * INNER_SCAN for number in range(round(END / INNER_SCAN) + 1)]
-    changes = {begin for begin, _ in [*MODES, *FEEDS, *SET_POINTS]} | {*scans}
-    points = sorted(changes)
+    points = sorted({begin for begin, _ in [*MODES, *FEEDS, *SET_POINTS]} | {*scans, *time})
     for begin, end in zip(points, [*points[1:], END], strict=True):
         for moment, mode in MODES[1:]:
             if moment == begin:
@@ -178,9 +165,8 @@ def tables() -> list[Table]:
 
 
 def verify() -> float:
-    """Three tolerances."""
-    best = _table(RTOL)
-    return max(largest_difference(best, _table(1e-10)), largest_difference(best, _table(1e-13)))
+    """Two tolerances."""
+    return largest_difference(_table(RTOL), _table(0.1 * RTOL))
 
 
 if __name__ == "__main__":

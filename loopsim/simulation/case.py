@@ -1,0 +1,65 @@
+"""One strategy of one scenario, from files to trends."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+from loopsim.documents.types import Scenario
+from loopsim.errors import InputError
+from loopsim.language.units import to_si
+from loopsim.model.audit import audit
+from loopsim.model.choice import Source
+from loopsim.model.rest import OperatingPoint, rest
+from loopsim.model.types import Model
+from loopsim.simulation.actions import free_names
+from loopsim.simulation.run import RunResult, prepare, resolve, run
+
+ROWS = 1000  # recorded rows of a run that does not say how often it records
+
+
+@dataclass(frozen=True, slots=True)
+class Case:
+    """A strategy ready to run: its time model, its law, and where it rests (None for `starts: given`)."""
+
+    name: str
+    scenario: Scenario
+    model: Model
+    law: Model
+    point: OperatingPoint | None
+
+
+def case_of(name: str, scenario: Scenario, source: Source, point: str = "") -> Case:
+    """Assemble, find the rest, and audit the signs.
+
+    Raises `InputError` for wrong signs and other mistakes, `ComputationError` where there is no rest.
+    """
+    free = free_names(scenario.events)
+    law = source.law(point)
+    model = source.timed(free, point)
+    resting = rest(law) if scenario.starts == "steady" else None
+    if resting is not None:
+        problems = audit(law, resting.values)
+        if problems:
+            raise InputError(problems)
+    return Case(name, scenario, model, law, resting)
+
+
+def run_case(case: Case, judged: Iterable[str], number: int = 0) -> RunResult:
+    """The run of a case; `judged` are names as people write them, unknown ones left out."""
+    model, scenario = case.model, case.scenario
+    wanted = {name: flat for name, flat in ((one, resolve(model, one)) for one in judged) if flat is not None}
+    lasts = to_si(scenario.lasts.value, scenario.lasts.unit) if scenario.lasts.unit else scenario.lasts.value
+    every = lasts / ROWS
+    if scenario.record_every is not None and scenario.record_every.unit is not None:
+        every = to_si(scenario.record_every.value, scenario.record_every.unit)
+    simulation = prepare(model, case.law, case.point, scenario, wanted, recorded_names(case), number)
+    return run(simulation, every)
+
+
+def recorded_names(case: Case) -> dict[str, str]:
+    """What trends hold: the name that people read -> the model's name."""
+    chosen = case.scenario.record_signals
+    names = chosen if chosen is not None else tuple(case.model.signals)
+    found = {name: resolve(case.model, name) for name in names}
+    return {name: flat for name, flat in found.items() if flat is not None}

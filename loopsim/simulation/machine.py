@@ -1,0 +1,347 @@
+"""The engine text and a model's text made into one module, and the state of a run that it moves on.
+
+Only a `RunState` evolves; it is a value: `copy()` is a snapshot from which the same future follows, bit for bit.
+"""
+
+from __future__ import annotations
+
+import linecache
+import math
+from collections.abc import Callable, Iterator
+from copy import deepcopy
+from dataclasses import dataclass, field
+from importlib.resources import files
+from types import SimpleNamespace
+from typing import Any
+
+import numpy as np
+
+from loopsim.results import FloatArray
+from loopsim.simulation.guarded import GUARDED_FUNCTIONS
+
+ENGINE = ("history", "stepping", "advance")
+ECHOES = 256  # echoes that one dead time can hold; more are left to error control
+CAPACITY = 2000  # pieces that the engine can hold before they are put aside
+STEPS = 20000  # steps of one call of the engine
+RELATIVE = 1e-9  # default tolerance of a step
+MOST_STEPS = 50_000_000
+CODES = {
+    2: ("step_too_small", "the step size was lost"),
+    3: ("not_finite", "a rate of change is not a finite number"),
+    5: ("unsolved", "an equation has no solution"),
+    7: ("chatter", "a comparison turns over for ever without time going on"),
+}
+
+
+@dataclass(frozen=True, slots=True)
+class Machine:
+    """The functions and sizes of one model's module."""
+
+    module: SimpleNamespace
+    text: str
+
+    def __getattr__(self, name: str) -> Any:
+        return getattr(self.module, name)
+
+
+@dataclass(frozen=True, slots=True)
+class Outcome:
+    """How an advance ended: `reached`, `condition` (its switch in `index`), or a failure with a sentence."""
+
+    code: str
+    sentence: str = ""
+    index: int = -1
+
+
+@dataclass(slots=True)
+class RunState:
+    """Everything that evolves in a run: x, m, p, b as in the generated text, history, counters, and what was recorded."""
+
+    e: list[float]
+    j: list[int]
+    x: list[float]
+    m: list[float]
+    p: list[float]
+    b: list[float]
+    h: list[float]
+    n: list[int]
+    z: list[float]
+    q: list[float]
+    timing: list[list[float]]
+    counters: list[list[int]]
+    pending: list[float]
+    waiting: list[int]
+    pieces: list[FloatArray] = field(default_factory=list)
+    rows: list[FloatArray] = field(default_factory=list)
+    reversed_at: float = math.nan
+
+    @property
+    def t(self) -> float:
+        """The present time [s]."""
+        return self.e[0]
+
+    @property
+    def record_every(self) -> float:
+        """Seconds between recorded rows, 0 for none."""
+        return self.e[2]
+
+    @record_every.setter
+    def record_every(self, every: float) -> None:
+        self.e[2] = every
+
+    def copy(self) -> RunState:
+        """A snapshot."""
+        return deepcopy(self)
+
+    def statistics(self) -> dict[str, int]:
+        """Steps taken and tries rejected."""
+        return {"steps": self.j[0], "rejected": self.j[1]}
+
+
+def build(model_text: str, name: str) -> Machine:
+    """Engine and model as one module; tracebacks show its lines."""
+    sizes = _sizes(model_text)
+    engine = "\n".join((files("loopsim.simulation.engine") / f"{part}.py").read_text("utf-8") for part in ENGINE)
+    constants = f"STRIDE = {2 + 5 * sizes['NW']}\nECHOES = {ECHOES}\n"
+    text = "\n".join([constants, model_text, "\n".join(_unrolled(sizes["NX"])), engine])
+    filename = f"<model {name}>"
+    linecache.cache[filename] = (len(text), None, text.splitlines(keepends=True), filename)
+    namespace: dict[str, Any] = dict(GUARDED_FUNCTIONS)
+    exec(compile(text, filename, "exec"), namespace)
+    return Machine(SimpleNamespace(**namespace), text)
+
+
+def _sizes(text: str) -> dict[str, int]:
+    """The constants at the head of a model's text."""
+    sizes = {}
+    for line in text.splitlines():
+        name, _, value = line.partition(" = ")
+        if len(name) == 2 and name.isupper():
+            sizes[name] = int(value)
+        elif sizes:
+            break
+    return sizes
+
+
+# ---------------------------------------------------------------- sums over states, written out
+STAGES: dict[str, tuple[tuple[str, float], ...]] = {
+    "stage_2": (("k1", 1 / 5),),
+    "stage_3": (("k1", 3 / 40), ("k2", 9 / 40)),
+    "stage_4": (("k1", 44 / 45), ("k2", -56 / 15), ("k3", 32 / 9)),
+    "stage_5": (("k1", 19372 / 6561), ("k2", -25360 / 2187), ("k3", 64448 / 6561), ("k4", -212 / 729)),
+    "stage_6": (
+        ("k1", 9017 / 3168),
+        ("k2", -355 / 33),
+        ("k3", 46732 / 5247),
+        ("k4", 49 / 176),
+        ("k5", -5103 / 18656),
+    ),
+    "stage_7": (("k1", 35 / 384), ("k3", 500 / 1113), ("k4", 125 / 192), ("k5", -2187 / 6784), ("k6", 11 / 84)),
+}
+ERROR = (
+    ("k1", 71 / 57600),
+    ("k3", -71 / 16695),
+    ("k4", 71 / 1920),
+    ("k5", -17253 / 339200),
+    ("k6", 22 / 525),
+    ("k7", -1 / 40),
+)
+DENSE = (
+    ("k1", -12715105075 / 11282082432),
+    ("k3", 87487479700 / 32700410799),
+    ("k4", -10690763975 / 1880347072),
+    ("k5", 701980252875 / 199316789632),
+    ("k6", -1453857185 / 822651844),
+    ("k7", 69997945 / 29380423),
+)
+
+
+def _sum(terms: tuple[tuple[str, float], ...], place: int) -> str:
+    return " + ".join(f"{factor!r}*{name}[{place}]" for name, factor in terms)
+
+
+def _unrolled(count: int) -> Iterator[str]:
+    """Stage sums, error norm and dense output as straight lines, one a state."""
+    for name, terms in STAGES.items():
+        arguments = ", ".join(stage for stage, _ in terms)
+        yield f"def {name}(x, {arguments}, step, y):"
+        yield from (f"    y[{i}] = x[{i}] + step*({_sum(terms, i)})" for i in range(count))
+        yield "    return 0.0\n"
+    yield "def error_norm(x, new, k1, k3, k4, k5, k6, k7, step, q):\n    worst = 0.0\n    total = 0.0"
+    for i in range(count):
+        yield f"    scale = greater(abs(new[{i}] - q[{1 + i}]), q[{1 + count + i}])"
+        yield f"    error = abs(step*({_sum(ERROR, i)}))/(q[0]*scale)"
+        yield "    total = total + error\n    if error > worst:\n        worst = error"
+    yield "    return worst + 0.0*total\n"
+    yield "def dense(share, step, x, f, y):"
+    names = ("k1", "k2", "k3", "k4", "k5", "k6", "k7")
+    yield from (f"    {name} = f[{place}]" for place, name in enumerate(names))
+    yield "    new = f[8]\n    rest = 1.0 - share"
+    for i in range(count):
+        yield f"    gain = new[{i}] - x[{i}]\n    bend = step*k1[{i}] - gain"
+        yield f"    y[{i}] = x[{i}] + share*(gain + rest*(bend + share*((gain - step*k7[{i}] - bend)"
+        yield f"        + rest*step*({_sum(DENSE, i)}))))"
+    yield "    return 0.0\n"
+
+
+# ---------------------------------------------------------------- runs
+def start(
+    machine: Machine,
+    x: list[float],
+    m: list[float],
+    p: list[float],
+    z: list[list[float]],
+    floors: list[float],
+    first_positions: tuple[float, ...],
+    relative: float = RELATIVE,
+) -> RunState:
+    """The state before the first boundary at t = 0.
+
+    `floors` [SI], one a state: changes below this size are not looked at more closely than `relative` of it.
+    """
+    sizes = machine.module
+    n = [1, 0, 0, 0, 0, 0, 0, 0, *([0] * sizes.ND)]
+    offsets, flat = [], list[float]()
+    for numbers in z:
+        offsets.append(len(flat))
+        flat += numbers
+    n += offsets + [len(numbers) for numbers in z]
+    stride = 2 + 5 * sizes.NW
+    h = [0.0] * (stride * CAPACITY)
+    state = RunState(
+        [0.0, 1.0, 0.0, 0.0, *([0.0] * 12), *([-1.0] * sizes.NC)],
+        [0] * 16,
+        x,
+        m,
+        p,
+        list(first_positions),
+        h,
+        n,
+        flat,
+        [relative, *x, *floors],
+        [[0.0] * sizes.NC, [0.0] * sizes.NC, [0.0] * sizes.NZ],
+        [[0] * sizes.NC, [0] * sizes.NZ],
+        [0.0] * (ECHOES * sizes.ND),
+        [0] * sizes.ND,
+    )
+    work = _work(machine)
+    _first_piece(machine, state, work)
+    return state
+
+
+def _work(machine: Machine) -> tuple[list[list[float]], list[float], list[float]]:
+    """Work arrays: stages and states, then w, samples, switch marks, a row; g; c."""
+    sizes = machine.module
+    f = [[0.0] * sizes.NX for _ in range(10)]
+    f += [[0.0] * sizes.NW, [0.0] * (5 * sizes.NW), [0.0] * sizes.NB, [0.0] * sizes.NR]
+    return f, [0.0] * sizes.NB, [0.0] * sizes.ND
+
+
+def _first_piece(machine: Machine, state: RunState, work: tuple[list[list[float]], list[float], list[float]]) -> None:
+    """What stood before the start: the watched signals as they are at the start, dead times passed through."""
+    module, (f, g, _) = machine.module, work
+    state.h[0] = -1e300
+    arrays = (state.x, state.m, state.p, state.b, state.h, state.n, state.z)
+    for _ in range(1 + 2 * module.ND):
+        module.set_switches(0.0, *arrays, g, f)
+        module.watched(0.0, 1, *arrays, f[10])
+        for part in range(5):
+            for place in range(module.NW):
+                state.h[2 + part * module.NW + place] = f[10][place]
+
+
+def boundary(machine: Machine, state: RunState, event: bool) -> None:
+    """Carry out the boundary at the present time: after an event's changes, or the scans that fall on it."""
+    f, g, c = _work(machine)
+    rows = [0.0] * (2 * (machine.NR + 1))
+    state.j[4] = 0
+    machine.carry_out(int(event), *_arguments(state, f, g, c), rows)
+    _keep_rows(machine, state, rows)
+
+
+def _arguments(state: RunState, f: list[list[float]], g: list[float], c: list[float]) -> tuple[Any, ...]:
+    return (
+        *(state.e, state.j, state.x, state.m, state.p, state.b, state.h, state.n, state.z, f, g, c),
+        *(*state.timing, *state.counters, state.pending, state.waiting),
+    )
+
+
+def advance(
+    machine: Machine, state: RunState, until: float, enough: Callable[[], bool] = lambda: False
+) -> Outcome:
+    """Move on to `until` [s] or to the first condition; `enough` is asked now and then whether to give up."""
+    f, g, c = _work(machine)
+    arguments = list(_arguments(state, f, g, c))
+    arguments.insert(12, state.q)
+    state.j[6] = 1
+    rows = [0.0] * (_row_count(state, until) * (machine.NR + 1))
+    while True:
+        state.j[4] = 0
+        status = machine.module.advance(until, STEPS, *arguments, rows)
+        _keep_rows(machine, state, rows)
+        if state.n[4] and math.isnan(state.reversed_at):
+            state.reversed_at = state.t
+        if status == 1:
+            put_aside(machine, state)
+        elif status == 4 and (enough() or state.j[0] > MOST_STEPS):
+            return Outcome("budget", "the run takes too long; it was given up")
+        elif status != 4:
+            break
+    if status == 0:
+        return Outcome("reached")
+    if status == 6:
+        return Outcome("condition", index=state.j[5])
+    code, sentence = CODES[status]
+    return Outcome(code, sentence, _culprit(machine, state, f) if status == 3 else state.j[5])
+
+
+def _row_count(state: RunState, until: float) -> int:
+    return 4 if state.record_every <= 0 else int((until - state.t) / state.record_every) + 4
+
+
+def _culprit(machine: Machine, state: RunState, f: list[list[float]]) -> int:
+    """The first state whose rate is not finite."""
+    arrays = (state.x, state.m, state.p, state.b, state.h, state.n, state.z)
+    machine.rates(state.t, 1, *arrays, f[0])
+    return next((i for i, rate in enumerate(f[0]) if not math.isfinite(rate)), -1)
+
+
+def _keep_rows(machine: Machine, state: RunState, rows: list[float]) -> None:
+    width, count = machine.NR + 1, state.j[4]
+    if count:
+        state.rows.append(np.array(rows[: count * width]).reshape(count, width))
+        state.j[4] = 0
+
+
+def put_aside(machine: Machine, state: RunState) -> None:
+    """Copy the pieces out and keep only those that a dead time can still reach; the store grows when it must."""
+    stride, count = 2 + 5 * machine.NW, state.n[0]
+    done = np.array(state.h[stride : count * stride]).reshape(count - 1, stride)
+    state.pieces.append(done[state.n[5] :])
+    first = _first_needed(machine, state, count)
+    kept = state.h[first * stride : count * stride]
+    state.n[0] = 1 + count - first
+    state.n[5] = count - first
+    room = max(CAPACITY, 2 * state.n[0]) * stride
+    state.h[:] = state.h[:stride] + kept + [0.0] * (room - stride - len(kept))
+    for k in range(machine.ND):
+        state.n[8 + k] = max(0, state.n[8 + k] - first + 1)
+
+
+def _first_needed(machine: Machine, state: RunState, count: int) -> int:
+    """The first piece that a dead time may still look at: one before its cursor, or all where lags may grow."""
+    if not machine.ND:
+        return count
+    if machine.KEEP:
+        return 1
+    return max(1, min(state.n[8 + k] for k in range(machine.ND)) - 1)
+
+
+def trends(machine: Machine, state: RunState) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArray]:
+    """Recorded times (r,) and rows (r, NR); starts (k,), lengths (k,) and samples (k, 5, NW) of all pieces."""
+    put_aside(machine, state)
+    width = machine.NW
+    pieces = np.concatenate(state.pieces) if state.pieces else np.zeros((0, 2 + 5 * width))
+    rows = np.concatenate(state.rows) if state.rows else np.zeros((0, machine.NR + 1))
+    samples = pieces[:, 2:].reshape(len(pieces), 5, width)
+    return rows[:, 0], rows[:, 1:], pieces[:, 0], pieces[:, 1], samples
