@@ -42,11 +42,12 @@ class Analysis:
     place: dict[str, int] = field(default_factory=dict)
     trees: dict[str, Expression] = field(default_factory=dict)
     settled: dict[str, Expression] = field(default_factory=dict)
+    _scales: dict[str, float] = field(default_factory=dict)
     _residuals: dict[str, Expression] = field(default_factory=dict)
     _settled_known: dict[str, bool] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
-        self.switches = Switches(moving_names(self._below))
+        self.switches = Switches(moving_names(self._below), self._scale)
         self.order = ordered(self.model, self._everything())
         for place, step in enumerate(self.order):
             for name in step.unknowns if isinstance(step, Loop) else (step.name,):
@@ -85,6 +86,18 @@ class Analysis:
         if name in model.implicits:
             return names_in(model.implicits[name].residual)
         return set()
+
+    def _scale(self, name: str) -> float:
+        """The size in SI of the unit that a name is written in; for a formula, of what it is made of."""
+        model = self.model
+        for items in (model.states, model.slots, model.memory, model.signals):
+            if name in items:
+                return items[name].unit.factor  # type: ignore[index, no-any-return]
+        if name not in self._scales:
+            self._scales[name] = 0.0
+            below = [self._scale(one) for one in self._below(name) or ()]
+            self._scales[name] = max(below, default=0.0)
+        return self._scales[name]
 
     def is_settled(self, name: str) -> bool:
         """Whether a name can change at events only: slots that do not move, and what is computed from them."""

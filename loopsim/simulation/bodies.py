@@ -95,8 +95,8 @@ class Bodies:
             name: len(self.parameters) + len(MOTION) * number for number, name in enumerate(sorted(self.wishes.moving))
         }
         self.size_of_p = len(self.parameters) + len(MOTION) * len(self.motion)
-        switches = self.analysis.switches.found
-        switches += [Switch(one.left, one.right, 0.0, one.tag, one.where) for one in self.wishes.conditions]
+        switches = self.analysis.switches
+        switches.found += [switches.made(one.left, one.right, 0.0, one.tag, one.where) for one in self.wishes.conditions]
 
     def _swept_flows(self) -> list[Expression]:
         """The flows behind the swept volumes, which count only while they are above zero."""

@@ -186,7 +186,7 @@ def _one_switch(bodies: Bodies, number: int, writer: Writer, done: set[int]) -> 
     lines = [line for side in (switch.left, switch.right) for line in _compared(bodies, side, writer, done)]
     left, right = writer.value(switch.left), writer.value(switch.right)
     lines += [*writer.take(), f"first = {left}", f"second = {right}", "gap = first - second"]
-    lines += [f"if abs(gap) <= {DEAD_ZONE}*(abs(first) + abs(second)):", "    gap = 0.0", f"g[{number}] = gap"]
+    lines += [f"if abs(gap) <= {DEAD_ZONE}*(abs(first) + abs(second)) + {switch.zone!r}:", "    gap = 0.0", f"g[{number}] = gap"]
     lines += ["if live == 1 and gap > 0.0:", f"    b[{number}] = 1.0"]
     return [*lines, "if live == 1 and gap < 0.0:", f"    b[{number}] = 0.0"]
 

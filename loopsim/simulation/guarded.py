@@ -76,10 +76,10 @@ def greater(a: float, b: float) -> float:
     return b if b > a else a
 
 
-def sticky(a: float, b: float, position: float) -> float:
+def sticky(a: float, b: float, zone: float, position: float) -> float:
     """1 for a > b, 0 for a < b, the position as it was where both are equal within rounding."""
     gap = a - b
-    if abs(gap) <= 1e-12 * (abs(a) + abs(b)):
+    if abs(gap) <= 1e-12 * (abs(a) + abs(b)) + zone:
         return position
     return 1.0 if gap > 0.0 else 0.0
 

@@ -13,15 +13,22 @@ from loopsim.errors import Where
 from loopsim.language.tree import Call, Expression, Number, Operation, names_in, parts, rebuild
 
 
+ZONE = 1e-12  # of the unit in which a quantity is written
+
+
 @dataclass(frozen=True, slots=True)
 class Switch:
-    """`left` against `right`; `tie` is the position at the start where both are equal."""
+    """`left` against `right`; `tie` is the position at the start where both are equal.
+
+    Gaps up to `zone` [SI] count as none, so that what rests on a limit of zero does not flicker.
+    """
 
     left: Expression
     right: Expression
     tie: float
     tag: str
     where: Where
+    zone: float
 
 
 @dataclass(slots=True)
@@ -29,6 +36,7 @@ class Switches:
     """All switches of a model in the order in which they must be evaluated (inner before outer)."""
 
     moves: Callable[[str], bool]
+    scale: Callable[[str], float]
     found: list[Switch] = field(default_factory=list)
     _numbers: dict[tuple[Expression, Expression, float], int] = field(default_factory=dict)
 
@@ -37,8 +45,13 @@ class Switches:
         key = (left, right, tie)
         if key not in self._numbers:
             self._numbers[key] = len(self.found)
-            self.found.append(Switch(left, right, tie, tag, where))
+            self.found.append(self.made(left, right, tie, tag, where))
         return self._numbers[key]
+
+    def made(self, left: Expression, right: Expression, tie: float, tag: str, where: Where) -> Switch:
+        """A switch with the dead zone that suits what it compares."""
+        scales = [self.scale(name) for name in names_in(left) | names_in(right)]
+        return Switch(left, right, tie, tag, where, ZONE * max(scales, default=1.0))
 
     def apply(self, tree: Expression, tag: str, where: Where) -> Expression:
         """The tree with its moving comparisons replaced by switches."""

@@ -110,7 +110,7 @@ class Writer:
         if not self.sticky:
             return f"b[{number}]"
         switch = self.switches[number]
-        return f"sticky({self.value(switch.left)}, {self.value(switch.right)}, b[{number}])"
+        return f"sticky({self.value(switch.left)}, {self.value(switch.right)}, {switch.zone!r}, b[{number}])"
 
     def _operation(self, tree: Operation) -> str:
         if tree.operator == "neg":

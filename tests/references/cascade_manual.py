@@ -12,7 +12,8 @@ An output within 1e-9 of a limit counts as standing at it: holding the integral 
 Events lie between scans: by the next scan of TIC-1, FIC-1 has executed in its new mode.
 
 Trust: valve position by formula, the rest by DOP853 restarted at every scan, tabulated instant and change between
-stroke speed and lag; the whole run at rtol 1e-12 against 1e-13. Asserted: the limit is met and never nearly met; no step at a transfer.
+stroke speed and lag; the whole run at rtol 1e-12 against 1e-13. Asserted: the limit is met, and never nearly met; no
+step at a transfer.
 """
 
 from __future__ import annotations
@@ -42,7 +43,7 @@ def latest(steps: list[tuple[float, float]], time: float) -> float:
 
 @dataclass
 class Run:
-    """The run so far: continuous states (T [100 K above 0 degC], flow reading, temperature reading), position, output."""
+    """The run so far: states (T [100 K above 0 degC], readings of flow and temperature), position, valve signal."""
 
     rtol: float
     state: list[float]
@@ -76,7 +77,8 @@ class Run:
         piece = integrate(rates, begin, end, self.state, self.rtol)
         for one in wanted:
             if begin <= one <= end:
-                self.sampled[one] = (*(float(part) for part in piece(one)), position(one))
+                T, flow, reading = (float(part) for part in piece(one))
+                self.sampled[one] = (T, flow, reading, position(one))
         self.state, self.position = [float(part) for part in piece.last], position(end)
 
 
@@ -137,7 +139,8 @@ def run(rtol: float) -> tuple[Run, dict[float, tuple[float, float]]]:
         if begin in scans:
             loops.scan(begin, plant.state[1], plant.state[2])
         plant.signal = loops.inner.output
-        outputs.update({one: (loops.outer.output, loops.inner.output) for one in time if begin <= one < max(end, begin + 1e-9)})
+        if begin in time:
+            outputs[begin] = (loops.outer.output, loops.inner.output)
         plant.advance(begin, end, latest(FEEDS, begin), [one for one in time if begin <= one <= end])
     if loops.at_limit < 5:
         raise ArithmeticError("the inner controller was to stand at its limit for a while")

@@ -2,8 +2,9 @@
 
 The written law (reference_controller) over 125 scans of 2 s. The measurements are boundary signals: a base with ramps,
 a pulse on it. TIC-1 ideal, TIC-2 series, TIC-3 parallel with settings that convert into each other:
-series (Kc 1.6, Ti 48 s, Td 12 s) = ideal (Kc 2, Ti 60 s, Td 9.6 s) = parallel (Kp 2, 1/Ki 30 s, Kd 19.2 s), N 8, beta 0.5;
-all three through a set-point step at a scan and one between scans, manual and back, a rise of the gain by half.
+series (Kc 1.6, Ti 48 s, Td 12 s) = ideal (Kc 2, Ti 60 s, Td 9.6 s) = parallel (Kp 2, 1/Ki 30 s, Kd 19.2 s), each
+with N 8 and beta 0.5, through a set-point step at a scan and one between scans, manual and back, and a rise of the
+gain by half.
 TIC-4: direct, PD, no integral: I is the bias (35 %), and after manual what the last manual output leaves.
 TIC-5: PI, beta 0.7, on a measurement that never rests, with feedforward; then gain, integral time and beta change
 while the measurement moves: each such scan absorbs what P and ff do in it, and the output moves by dI alone.
@@ -25,8 +26,8 @@ from reference_tools import Table, instants, largest_difference, main
 NAME = "controller_forms"
 SCAN, END, EVERY = 2.0, 250.0, 1.0
 # pv [degC]: base by straight lines from (time, value) to the next, and a pulse
-LINES = [(0.0, 42.0), (20.0, 42.0), (50.0, 47.0), (62.0, 47.0), (72.0, 41.0), (102.0, 41.0), (120.0, 46.0), (180.0, 46.0),
-         (200.0, 43.0), (250.0, 43.0)]  # fmt: skip
+LINES = [(0.0, 42.0), (20.0, 42.0), (50.0, 47.0), (62.0, 47.0), (72.0, 41.0), (102.0, 41.0), (120.0, 46.0),
+         (180.0, 46.0), (200.0, 43.0), (250.0, 43.0)]  # fmt: skip
 PULSE = (205.0, 215.0, 2.0)
 DRIFT = [(0.0, 40.0), (250.0, 50.0)]
 FEEDFORWARD = [(0.0, 0.0), (31.0, 0.0), (31.0, 0.04), (180.0, 0.04), (190.0, 0.01), (250.0, 0.01)]
@@ -65,7 +66,7 @@ def nothing(_: float) -> float:
 
 @dataclass(frozen=True)
 class Case:
-    """One controller: ideal settings (`integral` nought: none), start of I, measurement, and changes at their instants."""
+    """One controller: ideal settings (`integral` nought: none), start of I, measurement, changes at their instants."""
 
     settings: dict[str, float]
     I: float  # noqa: E741  (the letter the law is written with)
@@ -78,7 +79,8 @@ class Case:
 THREE = Case(
     {"gain": 2.0, "integral": 60.0, "derivative": 9.6, "N": 8.0, "beta": 0.5, "sign": 1.0},
     0.85, 0.45, pv,
-    changes={60.5: {"manual": 0.62}, 90.5: {"auto": 1.0}, 100.0: {"sp": 0.48}, 113.0: {"sp": 0.46}, 171.0: {"gain": 3.0}},
+    changes={60.5: {"manual": 0.62}, 90.5: {"auto": 1.0}, 100.0: {"sp": 0.48}, 113.0: {"sp": 0.46},
+             171.0: {"gain": 3.0}},
 )  # fmt: skip
 BIASED = Case(
     {"gain": 1.5, "integral": 0.0, "derivative": 6.0, "N": 10.0, "beta": 1.0, "sign": -1.0},
@@ -170,7 +172,9 @@ def _table(way: Callable[[Case], list[float]]) -> Table:
 def _held(case: Case, outputs: list[float], time: float) -> float:
     """The output as it stands at `time`: the last scan's, or the manual output set since."""
     scan = int(time // SCAN)
-    set_since = [one["manual"] for moment, one in case.changes.items() if "manual" in one and scan * SCAN < moment <= time]
+    set_since = [
+        one["manual"] for moment, one in case.changes.items() if "manual" in one and scan * SCAN < moment <= time
+    ]
     return set_since[-1] if set_since else outputs[scan]
 
 

@@ -12,7 +12,7 @@ from __future__ import annotations
 
 import math
 
-from reference_tools import Table, instants, integrate, largest_difference, main
+from reference_tools import FloatArray, Table, instants, integrate, largest_difference, main
 
 NAME = "heated_tank_feed_step"
 V, RHO, CP, UA = 1.8, 998.0, 4182.0, 260.0
@@ -48,8 +48,8 @@ def by_integration(time: list[float]) -> list[float]:
     for (begin, q, feed), end in zip(STAGES, ends, strict=True):
         flow = RHO * CP * q
 
-        def rates(_: float, x: object, flow: float = flow, feed: float = feed) -> list[float]:
-            return [(flow * (feed - x[0]) + Q - UA * (x[0] - ROOM)) / (RHO * CP * V)]  # type: ignore[index]
+        def rates(_: float, x: FloatArray, flow: float = flow, feed: float = feed) -> list[float]:
+            return [(flow * (feed - x[0]) + Q - UA * (x[0] - ROOM)) / (RHO * CP * V)]
 
         piece = integrate(rates, begin, end, [temperature])
         found.update({one: float(piece(one)[0]) for one in time if begin <= one <= end})

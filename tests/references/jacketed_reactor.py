@@ -18,9 +18,10 @@ equations give the published low state (asserted to its printed digits).
 from __future__ import annotations
 
 import math
+from typing import Literal
 
-from reference_tools import RTOL, FloatArray, Table, instants, largest_difference, main
-from scipy.integrate import solve_ivp
+import numpy as np
+from reference_tools import RTOL, FloatArray, Table, instants, integrate, largest_difference, main
 from scipy.optimize import fsolve
 
 NAME = "jacketed_reactor"
@@ -34,6 +35,8 @@ STAGES = [(0.0, 300.0, 25.87 + 273.15), (2.0, 300.0, 21.0 + 273.15), (11.0, 200.
 START = (0.877, 51.35 + 273.15, 26.85 + 273.15)
 END, EVERY = 40.0, 0.125
 
+Way = Literal["DOP853", "Radau"]
+
 
 def vessel(c: float, T: float, T_j: float, e_over_r: float = E_OVER_R) -> tuple[float, float]:
     """Rates of c [mol/(L*min)] and T [K/min]."""
@@ -44,11 +47,15 @@ def vessel(c: float, T: float, T_j: float, e_over_r: float = E_OVER_R) -> tuple[
 
 def published_low_state() -> tuple[float, float]:
     """Rest with the jacket held at 300 K and the printed E/R."""
-    c, T = fsolve(lambda x: vessel(x[0], x[1], 300.0, 8750.0), [0.877, 324.5], xtol=1e-12)
+
+    def at_rest(x: FloatArray) -> tuple[float, float]:
+        return vessel(float(x[0]), float(x[1]), 300.0, 8750.0)
+
+    c, T = fsolve(at_rest, [0.877, 324.5], xtol=1e-12)
     return float(c), float(T)
 
 
-def stretch(x: FloatArray, begin: float, length: float, way: str) -> FloatArray:
+def stretch(x: FloatArray, begin: float, length: float, way: Way) -> FloatArray:
     """(c, T/100, T_j/100) after a stretch."""
     _, q_j, feed = [one for one in STAGES if one[0] <= begin][-1]
 
@@ -57,12 +64,12 @@ def stretch(x: FloatArray, begin: float, length: float, way: str) -> FloatArray:
         jacket = (RHO_CP_J * q_j * (feed - 100.0 * z[2]) + 100.0 * UA * (z[1] - z[2])) / (RHO_CP_J * V_J)
         return [c_rate, T_rate / 100.0, jacket / 100.0]
 
-    return solve_ivp(rates, (0.0, length), x, method=way, rtol=RTOL, atol=0.01 * RTOL).y[:, -1]
+    return integrate(rates, 0.0, length, list(x), RTOL, way).last
 
 
-def _table(way: str) -> Table:
+def _table(way: Way) -> Table:
     time, rows = instants(END, EVERY), []
-    x = [START[0], START[1] / 100.0, START[2] / 100.0]
+    x = np.array([START[0], START[1] / 100.0, START[2] / 100.0])
     for begin in time:
         rows.append(x)
         x = stretch(x, begin, EVERY, way) if begin < END else x

@@ -113,7 +113,7 @@ class Plant:
         for bound in (0.0, H_MAX):
             inside, outside = level(0.0) - bound, level(length) - bound
             if inside * outside < 0.0 and abs(inside) > 1e-12:
-                return float(brentq(lambda s, bound=bound: level(s) - bound, 0.0, length, xtol=1e-14, rtol=1e-14))  # type: ignore[misc]
+                return float(brentq(lambda s, bound=bound: level(s) - bound, 0.0, length, xtol=1e-14, rtol=1e-14))
         return length
 
 
@@ -153,7 +153,8 @@ def run(exact: bool) -> tuple[Plant, dict[float, float]]:
         demand = [value for start, value in DEMANDS if start <= begin][-1]
         if begin in time:
             overflow = max(Q_MAX * plant.position - demand, 0.0) if plant.level >= H_MAX else 0.0
-            plant.rows[begin], outputs[begin] = (plant.level, plant.reading, plant.position, overflow), controller.output
+            plant.rows[begin] = (plant.level, plant.reading, plant.position, overflow)
+            outputs[begin] = controller.output
         plant.advance(begin, end, demand)
     if min(plant.empty, plant.full) < 60.0:
         raise ArithmeticError(f"empty for {plant.empty} s, full for {plant.full} s: the case wants both")

@@ -1,8 +1,8 @@
 """Ten minutes at the output limit and the release, for both ways against windup. Closed form.
 
 Process: gain 1, lag 60 s behind a dead time of 10 s, its input held between scans, so exact exponentials.
-Controller: PID, gain 1, integral 90 s, derivative 8 s (N 8), scan 5 s, output limits 10 % and 60 %, the written law with
-`windup: hold` and with `windup: track` (tracking time: the integral time).
+Controller: PID, gain 1, integral 90 s, derivative 8 s (N 8), scan 5 s, output limits 10 % and 60 %, the written law
+with `windup: hold` and with `windup: track` (tracking time: the integral time).
 Set point: 40 %; 75 % from 60 s, out of reach for ten minutes (the measurement stops at 60 %); 45 % from 660 s; 2 % from
 1200 s, out of reach below for ten minutes; 30 % from 1800 s.
 
@@ -27,9 +27,7 @@ def run(windup: str) -> tuple[LagOfHeldSignal, list[float]]:
     """The process and the output after each scan."""
     start = STEPS[0][1]
     process = LagOfHeldSignal(LAG, DEAD_TIME, start)
-    controller = Controller(
-        1.0, 90.0, output=start, I=start, derivative=8.0, N=8.0, low=LOW, high=HIGH, windup=windup
-    )
+    controller = Controller(1.0, 90.0, output=start, I=start, derivative=8.0, N=8.0, low=LOW, high=HIGH, windup=windup)
     outputs = []
     for number in range(round(END / SCAN) + 1):
         time = number * SCAN

@@ -15,8 +15,9 @@ from __future__ import annotations
 
 import bisect
 import math
+from itertools import pairwise
 
-from reference_tools import RTOL, Table, instants, integrate, largest_difference, main
+from reference_tools import FloatArray, Table, instants, integrate, largest_difference, main
 
 NAME = "pipe_flow_change"
 V_PIPE, V_TANK = 0.150, 0.5
@@ -27,7 +28,7 @@ END, EVERY = 4800.0, 20.0
 
 BEGINS = [begin for begin, _ in FLOWS]
 VOLUMES = [0.0]
-for (_begin, _flow), (_end, _) in zip(FLOWS, FLOWS[1:], strict=False):
+for (_begin, _flow), (_end, _) in pairwise(FLOWS):
     VOLUMES.append(VOLUMES[-1] + _flow / 3600.0 * (_end - _begin))
 
 
@@ -81,7 +82,7 @@ def tank_by_formula(time: list[float]) -> list[float]:
     """Tank temperature [K], formula by formula between break points."""
     points = break_points()
     temperature, found = feed(0.0), {0.0: feed(0.0)}
-    for begin, end in zip(points, points[1:], strict=False):
+    for begin, end in pairwise(points):
         q, middle = flow(begin), 0.5 * (begin + end)
         first = _on_line(begin, begin, middle)
         slope = (feed(entered(middle)) - first) / (middle - begin)
@@ -108,14 +109,16 @@ def tank_by_integration(time: list[float]) -> list[float]:
     """The same by DOP853, the outlet found by bisection on W."""
     points = break_points()
     temperature, found = feed(0.0), {0.0: feed(0.0)}
-    for begin, end in zip(points, points[1:], strict=False):
+    for begin, end in pairwise(points):
         q, inside = flow(begin), 1e-9 * (end - begin)
 
-        def rates(t: float, x: object, q: float = q, low: float = begin + inside, high: float = end - inside) -> list[float]:
+        def rates(
+            t: float, x: FloatArray, q: float = q, low: float = begin + inside, high: float = end - inside
+        ) -> list[float]:
             outlet = feed(_bisected(min(max(t, low), high)))
-            return [q / V_TANK * (outlet - x[0])]  # type: ignore[index]
+            return [q / V_TANK * (outlet - x[0])]
 
-        piece = integrate(rates, begin, end, [temperature], RTOL)
+        piece = integrate(rates, begin, end, [temperature])
         found.update({one: float(piece(one)[0]) for one in time if begin < one <= end})
         temperature = float(piece.last[0])
     return [found[one] for one in time]

@@ -13,6 +13,7 @@ import sys
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -117,22 +118,28 @@ def largest_difference(one: Table, other: Table) -> float:
     return worst
 
 
-def integrate(rates: Rates, begin: float, end: float, start: Sequence[float], rtol: float = RTOL) -> Piece:
-    """Integrate between two discontinuities by DOP853 (Hairer, Norsett, Wanner, as in SciPy); absolute errors rtol/10.
+def integrate(
+    rates: Rates,
+    begin: float,
+    end: float,
+    start: Sequence[float],
+    rtol: float = RTOL,
+    method: Literal["DOP853", "Radau"] = "DOP853",
+) -> Piece:
+    """Integrate between two discontinuities by SciPy's DOP853 (explicit) or Radau (implicit); absolute errors rtol/10.
 
     States are to be scaled so that 1 is a usual size.
     """
-    solution = solve_ivp(
-        rates, (begin, end), list(start), method="DOP853", rtol=rtol, atol=0.1 * rtol, dense_output=True
-    )
-    if not solution.success:
+    span, first = (begin, end), np.array(start, dtype=np.float64)
+    solution = solve_ivp(rates, span, first, method=method, rtol=rtol, atol=0.1 * rtol, dense_output=True)
+    if not solution.success or solution.sol is None:
         raise ArithmeticError(solution.message)
     return Piece(begin, end, solution.sol, solution.y[:, -1])
 
 
 @dataclass(frozen=True)
 class Piece:
-    """A smooth piece of a solution on [begin, end]: callable, with its last values apart (they carry no interpolation)."""
+    """A smooth piece of a solution on [begin, end]: callable; its last values stand apart, free of interpolation."""
 
     begin: float
     end: float

@@ -1,7 +1,8 @@
 """Scanned PI controller on a dead time and a first-order lag: scan 15 s, process lag 60 s, dead time 10 s. Closed form.
 
 Process: y goes to u(t - 10 s) with 60 s; u is the controller's output, held between scans, so y is an exact exponential
-from jump to jump. Controller: the written law (see reference_controller), gain 3, integral time 60 s, scans at 0, 15, 30 … s.
+from jump to jump. Controller: the written law (see reference_controller), gain 3, integral time 60 s, scans at
+0, 15, 30 … s.
 The set point steps at a scan instant (60 s: the scan at 60 s sees it) and once between scans (637 s: seen at 645 s).
 
 Trust: the exact exponentials against DOP853; and the overshoot of a set-point step of 10 at a scan instant, which the

@@ -1,11 +1,12 @@
-"""Dead times shorter than a scan (0.3 s in a loop with 2 s) and shorter than any step (0.01 s under the continuous law).
+"""Dead times shorter than a scan (0.3 s in a loop with 2 s), and of 0.01 s under the continuous law.
 
 Process: lag*dy/dt = u - y, measured as m(t) = y(t - dead time); PI controller in fractions of span.
 
 Scanned: u is held between scans, y is an exact exponential from scan to scan, and the controller reads it 0.3 s back.
 Continuous (scan 0 s): u = Kc*(sp - m) + I, dI/dt = Kc/Ti*(sp - m); at a set-point step P jumps and I does not.
-With the state z = (y, I) this is a linear delay equation. Method of steps: on each stretch of one dead time (cut at the
-set-point steps and their echoes) m is the known solution of the stretch before. The limits are never reached (asserted).
+With the state z = (y, I) this is a linear delay equation. Method of steps: on each stretch of one dead time (cut at
+the set-point steps and their echoes) m is the known solution of the stretch before.
+The limits are never reached (asserted).
 
 Trust: scanned, exact exponentials against DOP853. Continuous, the stretches by Chebyshev collocation (18 points a
 stretch of 0.01 s, time constants 0.05 s and more, so exact to rounding) against DOP853 with its own interpolation.
@@ -13,10 +14,12 @@ stretch of 0.01 s, time constants 0.05 s and more, so exact to rounding) against
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 from reference_controller import Controller
 from reference_lag import LagOfHeldSignal
-from reference_tools import FloatArray, Table, instants, integrate, largest_difference, main
+from reference_tools import FloatArray, Piece, Table, instants, integrate, largest_difference, main
 
 SCANNED, CONTINUOUS = "short_dead_time_scanned", "short_dead_time_continuous"
 SCAN, SCAN_LAG, SCAN_DEAD_TIME, SCAN_GAIN, SCAN_INTEGRAL = 2.0, 20.0, 0.3, 4.0, 20.0
@@ -68,7 +71,7 @@ def stretches() -> list[tuple[float, float]]:
     phases = sorted({round(begin % DEAD_TIME, 9) for begin, _ in STEPS})
     count = round(END / DEAD_TIME)
     points = sorted({round(number * DEAD_TIME + phase, 9) for number in range(count) for phase in phases} | {END})
-    return list(zip(points, points[1:], strict=False))
+    return list(pairwise(points))
 
 
 class Collocation:
@@ -90,7 +93,7 @@ class Collocation:
         system = self.slopes / length - pull * np.eye(POINTS)
         right = forcing.copy()
         system[0], right[0] = np.eye(POINTS)[0], start
-        return np.linalg.solve(system, right)
+        return np.asarray(np.linalg.solve(system, right), dtype=np.float64)
 
     def value(self, samples: FloatArray, x: float) -> float:
         """Between the points, by the barycentric formula."""
@@ -103,7 +106,7 @@ class Collocation:
 
 def by_collocation(times: list[float]) -> tuple[list[float], list[float], list[float]]:
     """y, m and u at the times [s]."""
-    rule, (start, I) = Collocation(), (STEPS[0][1], STEPS[0][1])
+    rule, start, stored = Collocation(), STEPS[0][1], STEPS[0][1]
     pieces: dict[float, tuple[float, FloatArray]] = {}
     found: dict[float, tuple[float, float, float]] = {}
     y = start
@@ -111,7 +114,7 @@ def by_collocation(times: list[float]) -> tuple[list[float], list[float], list[f
         length, sp = end - begin, set_point(begin)
         earlier = pieces.get(round(begin - DEAD_TIME, 9))
         m = np.full(POINTS, start) if earlier is None else earlier[1]
-        integral = rule.solve(length, 0.0, I, GAIN / INTEGRAL * (sp - m))
+        integral = rule.solve(length, 0.0, stored, GAIN / INTEGRAL * (sp - m))
         u = GAIN * (sp - m) + integral
         curve = rule.solve(length, -1.0 / LAG, y, u / LAG)
         _inside(u)
@@ -120,7 +123,7 @@ def by_collocation(times: list[float]) -> tuple[list[float], list[float], list[f
             if begin - 1e-12 <= one < end - 1e-12 or one == END == end:
                 x = min(max((one - begin) / length, 0.0), 1.0)
                 found[one] = (rule.value(curve, x), rule.value(m, x), rule.value(u, x))
-        y, I = float(curve[-1]), float(integral[-1])
+        y, stored = float(curve[-1]), float(integral[-1])
     y_, m_, u_ = zip(*(found[one] for one in times), strict=True)
     return list(y_), list(m_), list(u_)
 
@@ -128,18 +131,19 @@ def by_collocation(times: list[float]) -> tuple[list[float], list[float], list[f
 def by_steps(times: list[float]) -> tuple[list[float], list[float], list[float]]:
     """y, m and u at the times [s] by DOP853, the history read from its own interpolation."""
     state = [STEPS[0][1], STEPS[0][1]]
-    pieces, found = {}, {}
+    pieces: dict[float, Piece] = {}
+    found: dict[float, tuple[float, float, float]] = {}
     for begin, end in stretches():
         sp, earlier = set_point(begin), pieces.get(round(begin - DEAD_TIME, 9))
 
-        def measured(t: float, earlier: object = earlier) -> float:
-            return STEPS[0][1] if earlier is None else float(earlier(t - DEAD_TIME)[0])  # type: ignore[operator]
+        def measured(t: float, earlier: Piece | None = earlier) -> float:
+            return STEPS[0][1] if earlier is None else float(earlier(t - DEAD_TIME)[0])
 
-        def output(t: float, I: float, sp: float = sp) -> float:
-            return GAIN * (sp - measured(t)) + I  # noqa: B023  (used before the loop goes on)
+        def output(t: float, stored: float, sp: float = sp) -> float:
+            return GAIN * (sp - measured(t)) + stored
 
         def rates(t: float, z: FloatArray, sp: float = sp) -> list[float]:
-            return [(output(t, z[1]) - z[0]) / LAG, GAIN / INTEGRAL * (sp - measured(t))]  # noqa: B023
+            return [(output(t, z[1]) - z[0]) / LAG, GAIN / INTEGRAL * (sp - measured(t))]
 
         piece = integrate(rates, begin, end, state, 1e-13)
         pieces[round(begin, 9)] = piece

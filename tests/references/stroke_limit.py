@@ -1,7 +1,8 @@
 """Flow loop under the continuous law (scan 0 s) with a valve that reaches its stroke speed on big set-point steps.
 
 u = Kc*(sp - F) + I, dI/dt = Kc/Ti*(sp - F) with F the flow reading in fractions of 0 to 10 m^3/h;
-dx/dt = clip((u - x)/positioner, ±1/stroke_time); dF/dt = (x - F)/lag. At a step of the set point P jumps, I and x do not.
+dx/dt = clip((u - x)/positioner, ±1/stroke_time); dF/dt = (x - F)/lag.
+At a step of the set point P jumps, but not I or x.
 Stroke speed is met and left inside a step, where |u - x| = positioner/stroke_time; the limits of the output are never
 met (asserted).
 
@@ -70,7 +71,7 @@ class Exact:
             after = step @ here
             left = excess(after, sp) > 1e-12 if mode == 0 else excess(after, sp) < -1e-12
             if left:
-                root = brentq(lambda s, here=here: excess(expm(rates * s) @ here, sp), 0.0, length / count, xtol=1e-15)  # type: ignore[misc]
+                root = brentq(lambda s, here=here: excess(expm(rates * s) @ here, sp), 0.0, length / count, xtol=1e-15)
                 return expm(rates * root) @ here, number * length / count + root
             here = after
         return expm(rates * length) @ z, length

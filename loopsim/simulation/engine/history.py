@@ -95,7 +95,8 @@ def crossing(h, base, v, target):
     low = 0.0
     high = 1.0
     first = h[base + 2 + v]
-    share = (target - first) / (h[base + 2 + 4 * NW + v] - first)
+    swept = h[base + 2 + 4 * NW + v] - first
+    share = (target - first) / swept
     if share < 0.0:
         return 0.0
     if share > 1.0:
@@ -104,6 +105,8 @@ def crossing(h, base, v, target):
     while count < 60:
         count += 1
         gap = quartic(h, base, v, share) - target
+        if abs(gap) <= 1e-13 * swept + 1e-16 * abs(target):
+            return share
         if gap > 0.0:
             high = share
         else:
