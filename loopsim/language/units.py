@@ -1,18 +1,244 @@
-"""Units of process engineering: text to factor, offset and dimension, with an allow-list."""
+"""Units of process engineering: text to factor, offset and dimension, with an allow-list.
+
+The list is a small set of definitions of our own, read by pint, so that only units of the trade exist and letters with
+another meaning elsewhere (C, F, T, a) are refused with the cure.
+"""
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+import difflib
+import re
+from dataclasses import dataclass, replace
+from fractions import Fraction
+from functools import cache, lru_cache
+from typing import TYPE_CHECKING
 
 from loopsim.language.dimensions import Dimension
+
+if TYPE_CHECKING:
+    from pint import UnitRegistry
+
+KELVIN = 273.15
+ATMOSPHERE = 101325.0  # Pa
+RANKINE = 5.0 / 9.0  # K
 
 
 @dataclass(frozen=True, slots=True)
 class Unit:
-    """A unit: SI value = number * factor + offset; `point` marks a place on a shifted scale (degC, bar(a), bar(g))."""
+    """A unit: SI value = number * factor + offset; `point` marks a place on a shifted scale (degC, bar(a), bar(g)).
+
+    The offset of a gauge pressure is the air pressure.
+    """
 
     text: str
     factor: float
     offset: float
     dimension: Dimension
     point: bool = False
+
+    @property
+    def gauge(self) -> bool:
+        """Whether it counts from the air pressure."""
+        return self.text.endswith("(g)")
+
+
+class UnitError(ValueError):
+    """A unit that is not on the list; `what` was found, `hint` is the cure."""
+
+    def __init__(self, what: str, hint: str = "") -> None:
+        super().__init__(what)
+        self.what, self.hint = what, hint
+
+
+# Base units and what is defined by them. Sources of the factors: the SI brochure; for inch, foot, pound, psi and the
+# US gallon NIST Special Publication 811, appendix B.
+DEFINITIONS = """
+kilogram = [mass] = kg
+meter = [length] = m
+second = [time] = s
+kelvin = [temperature] = K
+mole = [substance] = mol
+ampere = [current] = A
+radian = []
+g = 0.001 * kg
+mg = 0.000001 * kg
+ug = 0.000000001 * kg
+t = 1000 * kg
+cm = 0.01 * m
+mm = 0.001 * m
+um = 0.000001 * m
+km = 1000 * m
+ms = 0.001 * s
+min = 60 * s
+h = 3600 * s
+d = 86400 * s
+L = 0.001 * m ** 3
+mL = 0.001 * L
+hL = 100 * L
+N = kg * m / s ** 2
+kN = 1000 * N
+Pa = N / m ** 2
+kPa = 1000 * Pa
+MPa = 1000000 * Pa
+bar = 100000 * Pa
+mbar = 100 * Pa
+J = N * m
+kJ = 1000 * J
+MJ = 1000000 * J
+GJ = 1000000000 * J
+W = J / s
+kW = 1000 * W
+MW = 1000000 * W
+Wh = 3600 * J
+kWh = 1000 * Wh
+kmol = 1000 * mol
+mmol = 0.001 * mol
+umol = 0.000001 * mol
+mA = 0.001 * A
+V = W / A
+mV = 0.001 * V
+ohm = V / A
+S = 1 / ohm
+mS = 0.001 * S
+uS = 0.000001 * S
+Hz = 1 / s
+rad = radian
+deg = 0.017453292519943295 * radian
+rpm = 0.10471975511965977 * radian / s
+percent = 0.01 * radian
+ppm = 0.000001 * radian
+dimensionless_number = 1 * radian
+cP = 0.001 * Pa * s
+inch = 0.0254 * m
+ft = 0.3048 * m
+lb = 0.45359237 * kg
+psi = 6894.757293168361 * Pa
+gal = 0.003785411784 * m ** 3
+gpm = gal / min
+"""
+ALLOWED = frozenset(
+    name for line in DEFINITIONS.split("\n") for name in re.split(r"\W+", line) if name and not name[0].isdigit()
+) - {"kilogram", "meter", "second", "kelvin", "mole", "ampere", "radian", "mass", "length", "time", "temperature", "substance",
+     "current", "percent", "dimensionless_number"}  # fmt: skip
+SYMBOLS = {"[mass]": "kg", "[length]": "m", "[time]": "s", "[temperature]": "K", "[substance]": "mol", "[current]": "A"}
+POINTS = {
+    "degC": ("K", 1.0, KELVIN),
+    "degF": ("K", RANKINE, KELVIN - 32.0 * RANKINE),
+}
+PRESSURES = ("bar", "mbar", "Pa", "kPa", "MPa", "psi")
+CURES = {
+    "C": "write degC for a point on the scale, K for a difference",
+    "°C": "write degC for a point on the scale, K for a difference",
+    "F": "write degF for a point on the scale, K for a difference",
+    "T": "write t for a tonne",
+    "l": "write L for a litre",
+    "lpm": "write L/min",
+    "ml": "write mL",
+    "hr": "write h",
+    "sec": "write s",
+    "mins": "write min",
+    "M": "write mol/L",
+    "a": "write the time in d",
+    "barg": "write bar(g)",
+    "bara": "write bar(a)",
+    "psig": "write psi(g)",
+    "psia": "write psi(a)",
+    "Nm3": "write kg, or m^3 at a stated pressure and temperature",
+    "scfm": "write kg/h",
+    "deg_C": "write degC",
+    "celsius": "write degC",
+    "pct": "write %",
+    "percent": "write %",
+    "-": "write dimensionless",
+    "1": "write dimensionless",
+    "kcal": "write kJ",
+    "hp": "write kW",
+}
+
+
+@cache
+def _registry() -> UnitRegistry:
+    """A registry that knows the allowed units and nothing else."""
+    import pint
+
+    registry = pint.UnitRegistry(None, autoconvert_offset_to_baseunit=False)
+    for line in DEFINITIONS.strip().splitlines():
+        registry.define(line)
+    return registry
+
+
+@lru_cache(maxsize=None)
+def parse_unit(text: str) -> Unit:
+    """A unit from its text, such as `m^3/h`, `kJ/(kg*K)`, `degC`, `bar(g)`, `%`. Raises `UnitError` with the cure."""
+    wanted = text.strip()
+    if wanted in ("dimensionless", "count"):
+        return Unit(wanted, 1.0, 0.0, Dimension())
+    if wanted == "%":
+        return Unit("%", 0.01, 0.0, Dimension())
+    if wanted in POINTS:
+        base, factor, offset = POINTS[wanted]
+        return Unit(wanted, factor, offset, parse_unit(base).dimension, True)
+    stem, _, kind = wanted.partition("(")
+    if stem in PRESSURES and kind in ("a)", "g)"):
+        plain = parse_unit(stem)
+        return replace(plain, text=wanted, offset=ATMOSPHERE if kind == "g)" else 0.0, point=True)
+    return _compound(wanted)
+
+
+def _compound(text: str) -> Unit:
+    names = re.findall(r"[^\W\d]\w*|°C|%", text)
+    _refuse_strangers(text, names)
+    # a degree inside a compound unit is a difference
+    plain = re.sub(r"\bdegC\b", "K", text).replace("^", "**").replace("%", "percent")
+    if not re.fullmatch(r"[\w\s*/().\-]+", plain) or len(text) > 60:
+        raise UnitError(f"'{text}' is not a unit", "join units with * and /, powers with ^, as in kJ/(kg*K)")
+    try:
+        one = _registry().Quantity(1.0, _registry().parse_units(plain)).to_base_units()
+    except Exception:
+        raise UnitError(f"'{text}' is not a unit", "join units with * and /, powers with ^, as in kJ/(kg*K)") from None
+    powers = {SYMBOLS[name]: Fraction(power).limit_denominator(100) for name, power in one.dimensionality.items()}
+    return Unit(text, float(one.magnitude), 0.0, Dimension.of(powers))
+
+
+def _refuse_strangers(text: str, names: list[str]) -> None:
+    """Refuse names that are not on the list, with the cure where it is known."""
+    if not names:
+        raise UnitError(f"'{text}' is not a unit", "write a unit such as m^3/h, kW, degC or %")
+    for name in names:
+        if name in ALLOWED or name in ("degC", "%"):
+            continue
+        stem = re.fullmatch(r"([a-zA-Z]+)([23])", name)
+        if stem and stem[1] in ALLOWED:
+            cured = re.sub(rf"\b{name}\b", f"{stem[1]}^{stem[2]}", text)
+            raise UnitError(f"'{text}' is not a unit", f"write {cured}")
+        raise UnitError(f"'{name}' is not a unit known here", _cure(name))
+
+
+def _cure(name: str) -> str:
+    if name in CURES:
+        return CURES[name]
+    close = difflib.get_close_matches(name, [*ALLOWED, *POINTS], n=3, cutoff=0.5)
+    return "did you mean " + " or ".join(close) + "?" if close else "use a unit of process engineering, such as m^3/h or kW"
+
+
+def to_si(value: float, unit: Unit, air_pressure: float = ATMOSPHERE) -> float:
+    """A number in `unit` as SI; `air_pressure` [Pa] is where gauge pressures count from."""
+    return value * unit.factor + (air_pressure if unit.gauge else unit.offset)
+
+
+def from_si(value: float, unit: Unit, air_pressure: float = ATMOSPHERE) -> float:
+    """An SI number in `unit`."""
+    return (value - (air_pressure if unit.gauge else unit.offset)) / unit.factor
+
+
+def difference_of(unit: Unit) -> Unit:
+    """The unit of differences on a scale: K for degC, bar for bar(g), the unit itself otherwise."""
+    if not unit.point:
+        return unit
+    if unit.text in POINTS:
+        return parse_unit("K")
+    return parse_unit(unit.text.partition("(")[0])
+
+
+DIMENSIONLESS = Unit("dimensionless", 1.0, 0.0, Dimension())
+PERCENT = Unit("%", 0.01, 0.0, Dimension())
