@@ -1,112 +1,206 @@
-"""placeholder until the language layer lands"""
+"""Trees simplified, differentiated, and with names replaced."""
+
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 
 from loopsim.language.evaluate import evaluate
 from loopsim.language.tree import Call, Expression, Name, Number, Operation, Rate, names_in, parts, rebuild
 
 ZERO, ONE = Number(0.0), Number(1.0)
+ENGINE_CALLS = ("switch", "switched")  # calls whose number arguments are places, not values
 
 
-def op(o, *a):
-    return simplify_node(Operation(o, tuple(a)))
+def substitute(tree: Expression, names: Mapping[str, Expression]) -> Expression:
+    """The tree with names (those without an index) replaced by trees."""
+    if isinstance(tree, Name):
+        return names.get(tree.name, tree) if tree.index is None else tree
+    return rebuild(tree, tuple(substitute(part, names) for part in parts(tree)))
 
 
+# ---------------------------------------------------------------- simplification
 def simplify(tree: Expression) -> Expression:
-    below = tuple(simplify(p) for p in parts(tree))
-    return simplify_node(rebuild(tree, below))
+    """The same value in fewer nodes wherever the value is finite: numbers folded, 0 and 1 taken out."""
+    return _simplified(rebuild(tree, tuple(simplify(part) for part in parts(tree))))
 
 
-def simplify_node(t):
-    b = parts(t)
-    if isinstance(t, (Operation, Call)) and b and all(isinstance(p, Number) for p in b) and not (isinstance(t, Call) and t.function in ("switch", "switched")):
-        return Number(float(evaluate(t, {})))
-    if isinstance(t, Operation):
-        o = t.operator
-        if o == "+":
-            if b[0] == ZERO: return b[1]
-            if b[1] == ZERO: return b[0]
-        if o == "-":
-            if b[1] == ZERO: return b[0]
-            if b[0] == ZERO: return op("neg", b[1])
-        if o == "*":
-            if ZERO in b: return ZERO
-            if b[0] == ONE: return b[1]
-            if b[1] == ONE: return b[0]
-        if o == "/":
-            if b[0] == ZERO: return ZERO
-            if b[1] == ONE: return b[0]
-        if o == "^" and b[1] == ONE: return b[0]
-        if o == "neg" and isinstance(b[0], Operation) and b[0].operator == "neg": return b[0].arguments[0]
-        if o == "and":
-            for i in (0, 1):
-                if isinstance(b[i], Number): return b[1 - i] if b[i].value else ZERO
-        if o == "or":
-            for i in (0, 1):
-                if isinstance(b[i], Number): return ONE if b[i].value else b[1 - i]
-    if isinstance(t, Call) and t.function == "where":
-        kept = []
-        for c, br in zip(b[:-1:2], b[1::2]):
-            if isinstance(c, Number):
-                if c.value:
-                    return Call("where", (*kept, br)) if kept else br
-                continue
-            kept += [c, br]
-        return Call("where", (*kept, b[-1])) if kept else b[-1]
-    return t
+def _simplified(node: Expression) -> Expression:
+    """One node whose parts are simple already."""
+    below = parts(node)
+    if not below or isinstance(node, Rate):
+        return node
+    if all(isinstance(part, Number) for part in below) and not _engine_call(node):
+        return Number(float(evaluate(node, {})))
+    if isinstance(node, Operation):
+        rule = RULES.get(node.operator)
+        return rule(node, *below) if rule is not None else node
+    return _simple_where(node) if isinstance(node, Call) and node.function == "where" else node
 
 
-def derivative(t: Expression, name: str) -> Expression:
-    if isinstance(t, Number): return ZERO
-    if isinstance(t, Name): return ONE if t.name == name else ZERO
-    if isinstance(t, Rate): return ZERO
-    if name not in names_in(t): return ZERO
-    a = t.arguments
-    d = lambda e: derivative(e, name)
-    if isinstance(t, Operation):
-        match t.operator:
-            case "+" | "-": return op(t.operator, d(a[0]), d(a[1]))
-            case "*": return op("+", op("*", d(a[0]), a[1]), op("*", a[0], d(a[1])))
-            case "/":
-                return op("/", op("-", d(a[0]), op("*", t, d(a[1]))), a[1]) if d(a[1]) != ZERO else op("/", d(a[0]), a[1])
-            case "^":
-                if d(a[1]) == ZERO:
-                    return op("*", op("*", a[1], op("^", a[0], op("-", a[1], ONE))), d(a[0]))
-                return op("*", t, op("+", op("*", d(a[1]), Call("log", (a[0],))), op("*", a[1], op("/", d(a[0]), a[0]))))
-            case "neg": return op("neg", d(a[0]))
+def _engine_call(node: Expression) -> bool:
+    return isinstance(node, Call) and node.function in ENGINE_CALLS
+
+
+def _sum(node: Expression, a: Expression, b: Expression) -> Expression:
+    return b if a == ZERO else a if b == ZERO else node
+
+
+def _difference(node: Expression, a: Expression, b: Expression) -> Expression:
+    return a if b == ZERO else _operation("neg", b) if a == ZERO else node
+
+
+def _product(node: Expression, a: Expression, b: Expression) -> Expression:
+    if ZERO in (a, b):
         return ZERO
-    f = t.function
-    match f:
-        case "where":
-            out = []
-            for c, br in zip(a[:-1:2], a[1::2]): out += [c, d(br)]
-            out.append(d(a[-1]))
-            if all(o == ZERO for o in out[1::2]) and out[-1] == ZERO: return ZERO
-            return simplify_node(Call("where", tuple(out)))
-        case "min" | "max":
-            best, db = a[0], d(a[0])
-            for o in a[1:]:
-                c = Operation("<=" if f == "min" else ">=", (best, o))
-                db = simplify_node(Call("where", (c, db, d(o))))
-                best = Call(f, (best, o))
-            return db
-        case "clip":
-            return simplify_node(Call("where", (Operation("<", (a[0], a[1])), d(a[1]), Operation(">", (a[0], a[2])), d(a[2]), d(a[0]))))
-        case "abs": return op("*", Call("sign", a), d(a[0]))
-        case "rounded": return d(a[0])
-        case "sqrt": return op("/", d(a[0]), op("*", Number(2.0), t))
-        case "exp": return op("*", t, d(a[0]))
-        case "log": return op("/", d(a[0]), a[0])
-        case "log10": return op("/", d(a[0]), op("*", a[0], Number(2.302585092994046)))
-        case "sin": return op("*", Call("cos", a), d(a[0]))
-        case "cos": return op("neg", op("*", Call("sin", a), d(a[0])))
-        case "tan": return op("*", op("+", ONE, op("*", t, t)), d(a[0]))
-        case "tanh": return op("*", op("-", ONE, op("*", t, t)), d(a[0]))
-        case "interp": return op("*", Call("interp_slope", a), d(a[1]))
-    return ZERO
+    return b if a == ONE else a if b == ONE else node
 
 
-def substitute(t: Expression, m: Mapping[str, Expression]) -> Expression:
-    if isinstance(t, Name): return m.get(t.name, t) if t.index is None else t
-    return rebuild(t, tuple(substitute(p, m) for p in parts(t)))
+def _quotient(node: Expression, a: Expression, b: Expression) -> Expression:
+    if b == Number(-1.0):
+        return _operation("neg", a)
+    return a if b == ONE else ZERO if a == ZERO else node
+
+
+def _power(node: Expression, a: Expression, b: Expression) -> Expression:
+    return a if b == ONE else node
+
+
+def _negative(node: Expression, a: Expression) -> Expression:
+    return a.arguments[0] if isinstance(a, Operation) and a.operator == "neg" else node
+
+
+def _logic(node: Expression, a: Expression, b: Expression) -> Expression:
+    """`and`, `or` with one side known."""
+    assert isinstance(node, Operation)
+    for known, other in ((a, b), (b, a)):
+        if isinstance(known, Number):
+            decides = bool(known.value) == (node.operator == "or")
+            return Number(float(bool(known.value))) if decides else other
+    return node
+
+
+RULES: dict[str, Callable[..., Expression]] = {
+    "+": _sum,
+    "-": _difference,
+    "*": _product,
+    "/": _quotient,
+    "^": _power,
+    "neg": _negative,
+    "and": _logic,
+    "or": _logic,
+}
+
+
+def _simple_where(node: Call) -> Expression:
+    """Branches that are never taken dropped; those behind one that is always taken, too."""
+    kept: list[Expression] = []
+    for condition, branch in zip(node.arguments[:-1:2], node.arguments[1::2], strict=False):
+        if not isinstance(condition, Number):
+            kept += [condition, branch]
+        elif condition.value:
+            return Call("where", (*kept, branch), node.at) if kept else branch
+    return Call("where", (*kept, node.arguments[-1]), node.at) if kept else node.arguments[-1]
+
+
+def _operation(operator: str, *arguments: Expression) -> Expression:
+    return _simplified(Operation(operator, arguments))
+
+
+def _call(function: str, *arguments: Expression) -> Expression:
+    return _simplified(Call(function, arguments))
+
+
+# ---------------------------------------------------------------- derivatives
+def derivative(tree: Expression, name: str) -> Expression:
+    """d tree / d name, simplified; of `where`, `min`, `max`, `clip` by the branch in force; `rounded` passes."""
+    if isinstance(tree, Name):
+        return ONE if tree.name == name else ZERO
+    if isinstance(tree, Number | Rate) or name not in names_in(tree):
+        return ZERO
+    if isinstance(tree, Operation):
+        return _of_operation(tree, name)
+    if tree.function in PIECEWISE:
+        return PIECEWISE[tree.function](tree.arguments, name)
+    outer = OUTER.get(tree.function)
+    return _operation("*", outer(tree), derivative(tree.arguments[0], name)) if outer is not None else ZERO
+
+
+def _of_operation(tree: Operation, name: str) -> Expression:
+    if tree.operator == "neg":
+        return _operation("neg", derivative(tree.arguments[0], name))
+    if tree.operator not in ("+", "-", "*", "/", "^"):
+        return ZERO
+    a, b = tree.arguments
+    da, db = derivative(a, name), derivative(b, name)
+    match tree.operator:
+        case "*":
+            return _operation("+", _operation("*", da, b), _operation("*", a, db))
+        case "/":
+            top = _operation("-", da, _operation("*", tree, db)) if db != ZERO else da
+            return _operation("/", top, b)
+        case "^":
+            return _of_power(tree, a, b, da, db)
+    return _operation(tree.operator, da, db)
+
+
+def _of_power(tree: Operation, a: Expression, b: Expression, da: Expression, db: Expression) -> Expression:
+    lowered = _operation("*", b, _operation("^", a, _operation("-", b, ONE)))
+    by_base = _operation("*", lowered, da)
+    by_exponent = _operation("*", _operation("*", tree, _call("log", a)), db) if db != ZERO else ZERO
+    return _operation("+", by_base, by_exponent)
+
+
+def _of_where(arguments: tuple[Expression, ...], name: str) -> Expression:
+    branches = [derivative(one, name) for one in (*arguments[1::2], arguments[-1])]
+    if all(one == ZERO for one in branches):
+        return ZERO
+    kept: list[Expression] = []
+    for condition, branch in zip(arguments[:-1:2], branches, strict=False):
+        kept += [condition, branch]
+    return _simple_where(Call("where", (*kept, branches[-1])))
+
+
+def _of_extreme(sign: str) -> Callable[[tuple[Expression, ...], str], Expression]:
+    def rule(arguments: tuple[Expression, ...], name: str) -> Expression:
+        best, slope = arguments[0], derivative(arguments[0], name)
+        for other in arguments[1:]:
+            first = Operation(sign, (best, other))
+            slope = _simple_where(Call("where", (first, slope, derivative(other, name))))
+            best = Call("min" if sign == "<=" else "max", (best, other))
+        return slope
+
+    return rule
+
+
+def _of_clip(arguments: tuple[Expression, ...], name: str) -> Expression:
+    value, low, high = arguments
+    below, above = Operation("<", (value, low)), Operation(">", (value, high))
+    slopes = [derivative(one, name) for one in (low, high, value)]
+    if all(one == ZERO for one in slopes):
+        return ZERO
+    return _simple_where(Call("where", (below, slopes[0], above, slopes[1], slopes[2])))
+
+
+def _of_interp(arguments: tuple[Expression, ...], name: str) -> Expression:
+    return _operation("*", Call("interp_slope", arguments), derivative(arguments[1], name))
+
+
+PIECEWISE: dict[str, Callable[[tuple[Expression, ...], str], Expression]] = {
+    "where": _of_where,
+    "min": _of_extreme("<="),
+    "max": _of_extreme(">="),
+    "clip": _of_clip,
+    "interp": _of_interp,
+    "rounded": lambda arguments, name: derivative(arguments[0], name),
+}
+OUTER: dict[str, Callable[[Call], Expression]] = {
+    "sqrt": lambda tree: _operation("/", Number(0.5), tree),
+    "exp": lambda tree: tree,
+    "log": lambda tree: _operation("/", ONE, tree.arguments[0]),
+    "log10": lambda tree: _operation("/", Number(0.4342944819032518), tree.arguments[0]),
+    "sin": lambda tree: _call("cos", tree.arguments[0]),
+    "cos": lambda tree: _operation("neg", _call("sin", tree.arguments[0])),
+    "tan": lambda tree: _operation("+", ONE, _operation("*", tree, tree)),
+    "tanh": lambda tree: _operation("-", ONE, _operation("*", tree, tree)),
+    "abs": lambda tree: _call("sign", tree.arguments[0]),
+}
