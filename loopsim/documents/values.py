@@ -26,7 +26,7 @@ from loopsim.documents.types import (
 )
 from loopsim.errors import Problems, Where, fail
 from loopsim.language.parse import FormulaError, parse_formula
-from loopsim.language.units import Unit, UnitError, parse_unit
+from loopsim.language.units import Unit, UnitError, difference_of, parse_unit, to_si
 
 _NUMBER = re.compile(r"([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*")
 _STARTS_AS_NUMBER = re.compile(r"[+-]?\.?\d")
@@ -185,7 +185,7 @@ def _falls(low: Quantity, high: Quantity) -> bool:
         return (low.unit is high.unit or 0 in (low.value, high.value)) and low.value >= high.value
     if low.unit.dimension != high.unit.dimension:
         return False
-    return low.value * low.unit.factor + low.unit.offset >= high.value * high.unit.factor + high.unit.offset
+    return to_si(low.value, low.unit) >= to_si(high.value, high.unit)
 
 
 def table(node: Node) -> TableValue:
@@ -241,19 +241,15 @@ def _check_spread(value: Value, spread: Quantity) -> None:
     if spread.unit is not None and spread.unit.text == "%":
         if value.unit is not None and value.unit.offset != 0:
             what = f"a percentage of '{value.text}' means nothing: its scale does not start at zero"
-            raise fail(what, spread.where, f"write a difference, such as {_difference(value.unit)}")
+            raise fail(what, spread.where, f"write a difference, such as 2 {difference_of(value.unit).text}")
         return
     if spread.unit is not None and spread.unit.point:
-        hint = f"write a difference, such as {_difference(spread.unit)}"
+        hint = f"write a difference, such as 2 {difference_of(spread.unit).text}"
         raise fail(f"'{spread.text}' is a point on a scale", spread.where, hint)
     own, other = (quantity.unit.dimension if quantity.unit else None for quantity in (value, spread))
     if own != other:
         hint = "write per cent of the value (5 %), or a difference in a unit of the same kind"
         raise fail(f"'{spread.text}' does not fit '{value.text}'", spread.where, hint)
-
-
-def _difference(point: Unit) -> str:
-    return "2 K" if point.text == "degC" else "0.1 bar"
 
 
 def plain_value(node: Node) -> Value:

@@ -5,7 +5,6 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
-from loopsim.language.parse import parse_balance, parse_formula
 
 from loopsim.documents.block import block_from
 from loopsim.documents.library import Library, shipped
@@ -27,6 +26,7 @@ from loopsim.documents.types import (
     Word,
 )
 from loopsim.errors import InputError, Problems
+from loopsim.language.parse import parse_balance, parse_formula
 from loopsim.language.tree import Index, Name, Rate, names_in, walk
 
 SKETCHES = Path(__file__).parent / "sketches"
