@@ -63,6 +63,7 @@ from loopsim.errors import Problems, Where, fail
 from loopsim.language.units import Unit
 
 T = TypeVar("T")
+_UNIT = "unit: its unit, such as m^3/h"
 Finder = Callable[[str, Where], Block]
 
 
@@ -187,7 +188,7 @@ class _Reader:
         names = fields.every("names", new_name) if "names" in fields else None
         columns = fields.read("table", self.columns)
         if "unit" not in fields and names is None and "table" not in fields:
-            self.problems.add(f"'unit' is missing from the parameter '{owner.name}'", fields.where, "unit: its unit")
+            self.problems.add(f"'unit' is missing from the parameter '{owner.name}'", fields.where, _UNIT)
         optional = is_none(fields.node.get("default"))
         return Parameter(
             key=owner,

@@ -55,7 +55,7 @@ def new_key(found: Scalar) -> Key:
     made = key(found)
     wrong = check_name(made.name)
     if wrong:
-        raise fail(wrong, found.where)
+        raise fail(wrong, found.where, "choose another name")
     return made
 
 
@@ -64,7 +64,7 @@ def new_name(node: Node) -> str:
     text = name(node)
     wrong = check_name(text)
     if wrong:
-        raise fail(wrong, node.where)
+        raise fail(wrong, node.where, "choose another name")
     return text
 
 

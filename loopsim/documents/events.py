@@ -5,7 +5,7 @@ from __future__ import annotations
 import re
 from pathlib import Path
 
-from loopsim.documents.fields import Fields, address, beside, check_address, mapping, name, scalar, sentence, tag
+from loopsim.documents.fields import Fields, address, beside, check_address, mapping, scalar, sentence, tag
 from loopsim.documents.nodes import Node, Scalar
 from loopsim.documents.shapes import EVENTS
 from loopsim.documents.types import Condition, Event, Given, Quantity, Value, Word
@@ -57,7 +57,7 @@ def event(node: Node, folder: Path, problems: Problems) -> Event:
         file=fields.read("file", lambda node: beside(node, folder)) or "",
         column=fields.read("column", sentence) or "",
         unit=fields.read("unit", unit),
-        fault=fields.read("kind", name) or "",
+        fault=fields.read("kind", lambda node: tag(node, "a fault")) or "",
         size=fields.read("size", quantity),
         sets=_sets(fields),
     )
@@ -80,7 +80,7 @@ def _check_sizes(fields: Fields, kind: str) -> None:
 
 
 def _mode(node: Node) -> Value:
-    return Word(name(node, "a mode"), node.where)
+    return Word(tag(node, "a mode"), node.where)
 
 
 def _when(fields: Fields) -> Condition | None:

@@ -26,9 +26,11 @@ def scalar(node: Node, wanted: str) -> Scalar:
     """The node as a single text that is not empty."""
     if not isinstance(node, Scalar):
         what = "a list" if isinstance(node, Sequence) else "a mapping of keys"
-        raise fail(f"{what} stands where {wanted} is wanted", node.where)
+        raise fail(
+            f"{what} stands where {wanted} is wanted", node.where, "write a single text, in quotes if it has commas"
+        )
     if not node.text:
-        raise fail(f"nothing stands where {wanted} is wanted", node.where)
+        raise fail(f"nothing stands where {wanted} is wanted", node.where, "write it here, or take the key out")
     return node
 
 

@@ -98,5 +98,8 @@ def _files(folder: Path) -> dict[str, Path]:
 
 
 def _check(block: Block, problems: Problems) -> None:
-    check = importlib.import_module("loopsim.documents.check_block")
+    try:
+        check = importlib.import_module("loopsim.documents.check_block")
+    except ModuleNotFoundError:  # to become a plain import at the top as soon as that file is there
+        return
     check.check_block(block, problems)

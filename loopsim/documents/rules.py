@@ -10,7 +10,7 @@ from loopsim.documents.values import duration, looks_like_number, number, positi
 from loopsim.errors import Problems, Where, fail, nearest
 
 _LIMITS = {"reversals": number, "alarms": number, "outside": duration}
-_NOT_NEGATIVE = ("within", "overshoot", "undershoot", "iae", "travel", "reversals", "rate", "alarms")
+_NOT_NEGATIVE = ("within", "overshoot", "undershoot", "iae", "travel", "deviation", "reversals", "rate", "alarms")
 _MARGINS = {
     "gain_margin": number,
     "phase_margin": quantity,

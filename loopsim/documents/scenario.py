@@ -101,4 +101,5 @@ def _check_window(one: Rule, end: float, text: str, problems: Problems) -> None:
         what = f"the window starts at {one.after.text}; the run lasts {text}"
         problems.add(what, one.after.where, "let the run last longer")
     if one.until is not None and seconds(one.until) <= after:
-        problems.add(f"the window ends at {one.until.text}, before it starts", one.until.where)
+        what = f"the window ends at {one.until.text}, before it starts"
+        problems.add(what, one.until.where, "let it end later, or start earlier")

@@ -105,7 +105,7 @@ USE = Shape((Key("use", NAME, "the block file", True),), more=GIVEN)
 
 # ---------------------------------------------------------------- entries of a block
 _ABOUT = Key("about", SENTENCE, "what it is, in a few words")
-_PORT_UNIT = Key("unit", UNIT, "its unit", True)
+_PORT_UNIT = Key("unit", UNIT, "its unit, such as m^3/h", True)
 _BOUNDS = (
     Key("above", FORMULA_TEXT, "it must be greater than this"),
     Key("at_least", FORMULA_TEXT, "it must not be less than this"),
@@ -334,7 +334,13 @@ RULES: dict[str, Shape] = {
         Key("of", _OF, "the set point"),
     ),
     "iae": _rule("iae", QUANTITY, "integral of the absolute error at most this", Key("of", _OF, "the set point", True)),
-    "travel": _rule("travel", QUANTITY, "sum of all movements at most this"),
+    "travel": _rule(
+        "travel",
+        QUANTITY,
+        "sum of all movements at most this",
+        Key("band", QUANTITY, "play: movements inside it do not count"),
+    ),
+    "deviation": _rule("deviation", QUANTITY, "standard deviation at most this: how far noise moves a signal"),
     "reversals": _rule(
         "reversals",
         NUMBER,

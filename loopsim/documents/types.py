@@ -421,10 +421,10 @@ class Event:
 class Rule:
     """What must hold.
 
-    `kind` is max, min, within, overshoot, undershoot, iae, travel, reversals, rate, outside, alarms (signal rules)
+    `kind` is max, min, within, overshoot, undershoot, iae, travel, deviation, reversals, rate, outside, alarms (signals)
     or margins (with `loop` and `margins`: name -> least or most value).
     `limit` is the number behind the kind's own key; `of` a signal or a quantity; `by`, `after`, `until` the window.
-    `outside` is time outside `band` of `of`; `dwell` how long a signal must stay inside to count as settled.
+    `outside` is time outside `band` of `of`; `band` of travel and reversals is what does not count as a movement; `dwell` how long a signal must stay inside to count as settled.
     """
 
     kind: str

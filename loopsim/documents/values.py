@@ -33,6 +33,7 @@ _STARTS_AS_NUMBER = re.compile(r"[+-]?\.?\d")
 _OPERATORS = tuple("+-*/^<>=!)(,")
 _MIXED = re.compile(r"\S\s+[-+*/<>=!]|\s(?:and|or)\s")
 _NAME = re.compile(r"[A-Za-z_]\w*", re.ASCII)
+_WRITE_NUMBER = "write a number and its unit, such as 1.2 m^3"
 _PLAIN_YES = frozenset({"yes", "no", "true", "false"})
 _NOT_FINITE = re.compile(r"[+-]?\.?(inf|infinity|nan)\b", re.IGNORECASE)
 
@@ -64,7 +65,7 @@ def quantity(node: Node) -> Quantity:
         what = f"'{found.text}' is not a number"
         if _NOT_FINITE.match(found.text):
             what = f"'{found.text}' is not a finite number"
-        raise fail(what, found.where, "write a number and its unit, such as 1.2 m^3")
+        raise fail(what, found.where, _WRITE_NUMBER)
     return quantity_from(found.text, found.where)
 
 
@@ -75,7 +76,7 @@ def quantity_from(text: str, where: Where) -> Quantity:
     assert match is not None
     value, rest = float(match[1]), text[match.end() :]
     if not math.isfinite(value):
-        raise fail(f"'{match[1]}' is too large for a number", where)
+        raise fail(f"'{match[1]}' is too large for a number", where, _WRITE_NUMBER)
     return Quantity(value, unit_from(rest, where.shifted(match.end())) if rest else None, text, where)
 
 
@@ -199,7 +200,7 @@ def table(node: Node) -> TableValue:
         raise fail(f"the table has {len(x)} x and {len(y)} y", node.where, hint)
     for first, second in itertools.pairwise(x):
         if _falls(first, second):
-            raise fail(f"x must rise: '{second.text}' is not above '{first.text}'", second.where)
+            raise fail(f"x must rise: '{second.text}' is not above '{first.text}'", second.where, "sort the points")
     return TableValue(x, y, node.where)
 
 
@@ -226,7 +227,8 @@ def _given(node: Node, value: Callable[[Node], Value]) -> Given:
         if spread is not None and read is not None:
             fields.attempt(partial(_check_spread, read, spread))
     if tolerance and deviation:
-        problems.add("a value has a tolerance or a deviation, not both", fields.place("deviation"))
+        what = "a value has a tolerance or a deviation, not both"
+        problems.add(what, fields.place("deviation"), "keep one of them")
     problems.raise_if_any()
     assert read is not None
     return Given(read, read.where, tolerance, deviation, assumed, about)
@@ -284,13 +286,13 @@ def name_list(node: Node) -> NameList:
     """A list of names, none of them twice."""
     found = [(name(item), item.where) for item in items(node, "names")]
     if not found:
-        raise fail("the list of names is empty", node.where)
+        raise fail("the list of names is empty", node.where, "write at least one name")
     seen: set[str] = set()
     for text, where in found:
         if not _NAME.fullmatch(text):
             raise fail(f"'{text}' cannot be a name", where, "it starts with a letter; letters, digits and _ follow")
         if text in seen:
-            raise fail(f"'{text}' stands twice in the list", where)
+            raise fail(f"'{text}' stands twice in the list", where, "write each name once")
         seen.add(text)
     return NameList(tuple(text for text, _ in found), node.where)
 
@@ -300,7 +302,7 @@ def word(found: Scalar) -> Word:
     if found.plain and found.text.lower() in _PLAIN_YES:
         raise fail(f"'{found.text}' is neither on nor off", found.where, "write on or off, or the word in quotes")
     if _NOT_FINITE.match(found.text):
-        raise fail(f"'{found.text}' is not a finite number", found.where)
+        raise fail(f"'{found.text}' is not a finite number", found.where, _WRITE_NUMBER)
     if not _NAME.fullmatch(found.text):
         hint = "a value is a number with its unit (1.2 m^3), or a single word"
         raise fail(f"'{found.text}' is not a value", found.where, hint)

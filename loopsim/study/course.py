@@ -119,9 +119,24 @@ class Course:
         ]
         return np.concatenate(parts)
 
-    def travel(self) -> float:
-        """The sum of all movements, jumps included [SI]."""
-        return float(np.abs(np.diff(self.path())).sum())
+    def travel(self, play: float = 0.0) -> float:
+        """The sum of all movements, jumps included [SI], of something driven through a `play` [SI]."""
+        path = self.path()
+        if play <= 0.0:
+            return float(np.abs(np.diff(path)).sum())
+        total, follower = 0.0, float(path[0]) if len(path) else 0.0
+        for value in path.tolist():
+            moved = min(max(follower, value - play / 2), value + play / 2)
+            total += abs(moved - follower)
+            follower = moved
+        return total
+
+    def deviation(self) -> float:
+        """The standard deviation over time [SI]."""
+        whole = float(self.length.sum())
+        mean = float((self.samples @ BOOLE) @ self.length) / whole
+        square = float((((self.samples - mean) ** 2) @ BOOLE) @ self.length) / whole
+        return float(np.sqrt(max(square, 0.0)))
 
     def reversals(self, dead_zone: float) -> int:
         """How often the direction of movement changes, swings up to `dead_zone` [SI] not counted."""

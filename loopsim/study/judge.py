@@ -86,6 +86,8 @@ def window(run: Run, rule: Rule) -> tuple[float, float]:
 
 def _undisturbed(run: Run, rule: Rule, end: float) -> str:
     """A reason where nothing up to the window's end disturbs what the rule depends on."""
+    if rule.kind == "deviation":
+        return ""  # it asks what noise does while nothing else happens
     names = {rule.signal, rule.of} if isinstance(rule.of, str) else {rule.signal}
     for one in run.happenings:
         if one.time < end and names & one.reaches:

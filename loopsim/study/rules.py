@@ -122,17 +122,28 @@ def absolute_error(measured: Measured) -> Finding:
 
 
 def travel(measured: Measured) -> Finding:
-    """The sum of all movements."""
-    value, limit = measured.course.travel(), measured.limit(difference=True)
+    """The sum of all movements, through the play that `band` gives."""
+    value, limit = measured.course.travel(_band(measured, 0.0)), measured.limit(difference=True)
+    return Finding(on_or_under(value, limit), value, limit, difference_of(measured.unit))
+
+
+def deviation(measured: Measured) -> Finding:
+    """One sigma over the window."""
+    value, limit = measured.course.deviation(), measured.limit(difference=True)
     return Finding(on_or_under(value, limit), value, limit, difference_of(measured.unit))
 
 
 def reversals(measured: Measured) -> Finding:
-    """How often the signal turns round; swings below a thousandth of the unit's scale are not counted."""
-    dead_zone = 1e-3 if measured.unit.text == "%" else 1e-3 * measured.unit.factor
+    """How often the signal turns round; swings inside `band` (else a thousandth of its unit) are not counted."""
+    dead_zone = _band(measured, 0.1 * measured.unit.factor if measured.unit.text == "%" else 1e-3 * measured.unit.factor)
     value = float(measured.course.reversals(dead_zone))
     assert measured.rule.limit is not None
     return Finding(value <= measured.rule.limit.value, value, measured.rule.limit.value, COUNT)
+
+
+def _band(measured: Measured, otherwise: float) -> float:
+    band = measured.rule.band
+    return si(band, measured.run, difference_of(measured.unit)) if band is not None else otherwise
 
 
 def rate(measured: Measured) -> Finding:
@@ -171,6 +182,7 @@ KINDS: dict[str, Callable[[Measured], Finding]] = {
     "undershoot": undershoot,
     "iae": absolute_error,
     "travel": travel,
+    "deviation": deviation,
     "reversals": reversals,
     "rate": rate,
     "outside": outside,

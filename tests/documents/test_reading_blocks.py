@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
@@ -25,7 +26,7 @@ from loopsim.documents.types import (
     UnitText,
     Word,
 )
-from loopsim.errors import InputError, Problems
+from loopsim.errors import InputError, Problems, Where
 from loopsim.language.parse import parse_balance, parse_formula
 from loopsim.language.tree import Index, Name, Rate, names_in, walk
 
@@ -50,15 +51,23 @@ def write(folder: Path, name: str, text: str) -> Path:
     return path
 
 
-def block(folder: Path, name: str, text: str) -> Block:
-    write(folder, name, text)
-    return Library(folder).block(name)
+def block(name: str, **texts: str) -> Block:
+    """One of several blocks given as text, read but not checked for sense."""
+
+    def find(name: str, where: Where | None) -> Block:
+        problems = Problems()
+        tree = compose(source_from(f"block: {name}\n{texts[name]}".encode(), f"{name}.yaml"), problems)
+        assert isinstance(tree, Mapping)
+        found = block_from(tree, problems, find)
+        problems.raise_if_any()
+        return found
+
+    return find(name, None)
 
 
-def problems(folder: Path, name: str, text: str) -> list[str]:
-    write(folder, name, text)
+def problems_of(reading: Callable[[], object]) -> list[str]:
     with pytest.raises(InputError) as caught:
-        Library(folder).block(name)
+        reading()
     return [problem.what for problem in caught.value.problems]
 
 
@@ -123,8 +132,7 @@ def test_the_sections_of_other_blocks(library: Library) -> None:
     assert isinstance(library.block("reacting_tank").parameters[1].unit, ByChoice)
 
 
-EVERY_SECTION = """block: other_sections
-about: What no sketch shows.
+EVERY_SECTION = """about: What no sketch shows.
 one_of: [[Kv, q_max]]
 parameters:
   one_of: [[a, b, c]]
@@ -142,12 +150,8 @@ check:
 """
 
 
-def test_sections_that_no_sketch_has(library: Library) -> None:
-    found_problems = Problems()
-    tree = compose(source_from(EVERY_SECTION.encode(), "other_sections.yaml"), found_problems)
-    assert isinstance(tree, Mapping)
-    found = block_from(tree, found_problems, library.block)
-    assert not found_problems.found
+def test_sections_that_no_sketch_has() -> None:
+    found = block("other_sections", other_sections=EVERY_SECTION)
     assert found.one_of == (("Kv", "q_max"), ("a", "b", "c"))
     curve, span = found.parameters
     assert isinstance(curve.default, TableValue) and isinstance(span.default, PairValue)
@@ -200,10 +204,9 @@ streams:
 """
 
 
-def test_rename_reaches_every_name_and_no_unit(folder: Path) -> None:
-    write(folder, "base", RENAMED)
+def test_rename_reaches_every_name_and_no_unit() -> None:
     names = "{u: m, y: s, lag: tau, span: scale, n: count_n, i: j, way: turn}"
-    found = block(folder, "other", f"like: base\nrename: {names}\n")
+    found = block("other", base=RENAMED, other=f"like: base\nrename: {names}\n")
     parameters = {one.key.name: one for one in found.parameters}
     assert list(parameters) == ["tau", "scale", "count_n", "gain"]
     assert isinstance(parameters["tau"].unit, UnitText) and parameters["tau"].unit.text == "s"  # a unit stays a unit
@@ -228,39 +231,36 @@ def test_rename_reaches_every_name_and_no_unit(folder: Path) -> None:
     assert Name("m") in list(walk(found.balances[0].right))
 
 
-def test_rename_leaves_functions_alone(folder: Path) -> None:
-    write(folder, "base", RENAMED)
-    found = block(folder, "other", "like: base\nrename: {noise: max, u: noise}\n")
+def test_rename_leaves_functions_alone() -> None:
+    found = block("other", base=RENAMED, other="like: base\nrename: {noise: max, u: noise}\n")
     value = next(one for one in found.let if one.key.name == "max").value
     assert isinstance(value, ByChoice) and isinstance(up := value.options["up"], Formula)
     assert up.text == "max(noise, 1)" and up.tree == parse_formula("max(noise, 1)")
 
 
-def test_names_may_change_places(folder: Path) -> None:
-    write(folder, "base", RENAMED)
-    found = block(folder, "other", "like: base\nrename: {u: y, y: u}\n")
+def test_names_may_change_places() -> None:
+    found = block("other", base=RENAMED, other="like: base\nrename: {u: y, y: u}\n")
     assert found.balances[0].text == "lag*du/dt = y + dy - u"
 
 
-def test_like_takes_out_replaces_and_adds(folder: Path) -> None:
-    write(folder, "base", RENAMED)
+def test_like_takes_out_replaces_and_adds() -> None:
     lets = "let:\n  first: none\n  last: 3\n  more: u\n"
     others = "about: another\nsettings: {way: none}\nbalances: {lag: y = u}\n"
-    found = block(folder, "other", "like: base\n" + lets + others)
+    found = block("other", base=RENAMED, other="like: base\n" + lets + others)
     assert keys(found.let) == ["last", "noise", "more"] and found.settings == {} and found.about == "another"
     assert found.balances[0].text == "y = u" and found.name == "other"
 
 
-def test_a_chain_of_likes(folder: Path) -> None:
-    write(folder, "base", RENAMED)
-    write(folder, "middle", "like: base\nrename: {u: p}\n")
-    found = block(folder, "last", "like: middle\nrename: {p: q, y: z}\nlet: {first: none}\n")
+def test_a_chain_of_likes() -> None:
+    middle = "like: base\nrename: {u: p}\n"
+    last = "like: middle\nrename: {p: q, y: z}\nlet: {first: none}\n"
+    found = block("last", base=RENAMED, middle=middle, last=last)
     assert found.balances[0].text == "lag*dz/dt = q + dy - z" and keys(found.let) == ["last", "noise"]
 
 
-def test_lists_are_replaced_as_a_whole(folder: Path) -> None:
-    write(folder, "base", RENAMED + "assumes: [one, two]\nsources: [a book]\n")
-    found = block(folder, "other", "like: base\nassumes: [three]\n")
+def test_lists_are_replaced_as_a_whole() -> None:
+    base = RENAMED + "assumes: [one, two]\nsources: [a book]\n"
+    found = block("other", base=base, other="like: base\nassumes: [three]\n")
     assert found.assumes == ("three",) and found.sources == ("a book",)
 
 
@@ -275,25 +275,36 @@ def test_lists_are_replaced_as_a_whole(folder: Path) -> None:
         ("inputs: {v: none}", "there is no 'v' in inputs to take out"),
     ],
 )
-def test_wrong_likes(folder: Path, text: str, what: str) -> None:
-    write(folder, "base", RENAMED)
-    assert any(what in found for found in problems(folder, "other", f"like: base\n{text}\n"))
+def test_wrong_likes(text: str, what: str) -> None:
+    found = problems_of(lambda: block("other", base=RENAMED, other=f"like: base\n{text}\n"))
+    assert len(found) == 1 and what in found[0]
 
 
-def test_a_name_that_is_also_a_choice_is_not_renamed(folder: Path) -> None:
-    write(folder, "base", RENAMED.replace("choices: [up, down]", "choices: [up, down, u]"))
-    assert problems(folder, "other", "like: base\nrename: {u: w}\n") == ["'u' cannot be renamed"]
+def test_a_name_that_is_also_a_choice_is_not_renamed() -> None:
+    base = RENAMED.replace("choices: [up, down]", "choices: [up, down, u]")
+    found = problems_of(lambda: block("other", base=base, other="like: base\nrename: {u: w}\n"))
+    assert found == ["'u' cannot be renamed"]
 
 
 def test_circles_of_likes(folder: Path) -> None:
-    assert problems(folder, "one", "like: one\n") == ["'like' goes in a circle: one -> one"]
-    write(folder, "two", "like: three\n")
-    assert problems(folder, "three", "like: two\n") == ["'like' goes in a circle: three -> two -> three"]
+    for name, other in (("one", "one"), ("two", "three"), ("three", "two")):
+        write(folder, name, f"like: {other}\n")
+    assert problems_of(lambda: Library(folder).block("one")) == ["'like' goes in a circle: one -> one"]
+    assert problems_of(lambda: Library(folder).block("three")) == ["'like' goes in a circle: three -> two -> three"]
 
 
 # ---------------------------------------------------------------- finding blocks
+LAG = """about: our own
+parameters: {lag: {unit: s, at_least: 0}}
+inputs: {u: {unit: any}}
+states: {y: {unit: like u, start: u}}
+balances: {lag: lag*dy/dt = u - y}
+outputs: {y: {unit: like u}}
+"""
+
+
 def test_blocks_beside_the_plant_come_first_and_are_read_once(folder: Path) -> None:
-    write(folder, "first_order_lag", "about: our own\nlet: {a: 1}\n")
+    write(folder, "first_order_lag", LAG)
     library = Library(folder)
     assert library.block("first_order_lag").about == "our own"
     assert library.block("first_order_lag") is library.block("first_order_lag")
@@ -306,7 +317,7 @@ def test_an_unknown_block_names_the_nearest(library: Library) -> None:
 
 
 def test_two_files_of_one_name(folder: Path) -> None:
-    write(folder, "twice", "about: x\n")
+    write(folder, "twice", LAG)
     (folder / "blocks" / "twice.yaml").write_text("block: twice\nabout: x\n", encoding="utf-8")
     with pytest.raises(InputError, match="two files hold the block 'twice'"):
         Library(folder).names()
@@ -324,7 +335,7 @@ def test_a_broken_block_tells_its_problems_each_time(folder: Path) -> None:
 
 
 def test_a_block_file_alone_finds_its_relatives(folder: Path) -> None:
-    write(folder, "base", RENAMED)
+    write(folder, "base", LAG)
     path = write(folder, "other", "like: base\n")
     assert read_block(path).balances and read_document(path) == read_block(path)
 

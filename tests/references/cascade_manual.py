@@ -3,7 +3,7 @@
 Plant: stirred tank warmed by a constant heat and cooled by a cold feed whose flow a linear valve sets.
 V*dT/dt = q*(T_in - T) + Q/(rho*cp); q = q_max*x; dx/dt = clip((signal - x)/positioner, ±1/stroke_time);
 flow transmitter lag_F*dF/dt = q - F; temperature transmitter lag_T*dM/dt = T - M.
-Outer TIC-1 (direct, scan 10 s) writes the set point of inner FIC-1 (reverse, scan 2 s, limits 0 and 70 %); at one
+Outer TIC-1 (direct, scan 10 s) writes the set point of inner FIC-1 (reverse, scan 2 s, limits 0 and 69 %); at one
 instant the outer executes first. Written law (reference_controller) and what goes back along the set-point wire:
 - while FIC-1 stands at its upper limit the integral of TIC-1 only falls, at its lower limit it only rises;
 - while FIC-1 is in manual, or on its own set point, TIC-1's output is FIC-1's set point and its integral follows, so
@@ -87,7 +87,7 @@ class Loops:
 
     def __init__(self, flow: float) -> None:
         self.outer = Controller(4.0, 300.0, output=flow, I=flow, sign=-1.0)
-        self.inner = Controller(0.4, 5.0, output=flow, I=flow, high=0.7)
+        self.inner = Controller(0.4, 5.0, output=flow, I=flow, high=0.69)
         self.mode, self.mode_before, self.set_point = "cascade", "cascade", flow
         self.listens, self.may_rise, self.may_fall = True, True, True
         self.at_limit = 0

@@ -1,6 +1,6 @@
 """The scanned control law, written out by hand, in fractions of span.
 
-Source: the product's written law (contract, section 3), which is the usual positional law with backward differences:
+Source: the product's written law, which is the usual positional law with backward differences:
 
 P = s*Kc*(beta*sp - pv); dI = s*Kc*(Ts/Ti)*(sp - pv); D = Tf/(Tf + Ts)*D - s*Kc*Td/(Tf + Ts)*(pv - pv before),
 Tf = Td/N, D = 0 at the first scan; I <- I + dI first, then out = clip(P + I + D + ff, low, high).

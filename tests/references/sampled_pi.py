@@ -5,8 +5,8 @@ from jump to jump. Controller: the written law (see reference_controller), gain 
 0, 15, 30 … s.
 The set point steps at a scan instant (60 s: the scan at 60 s sees it) and once between scans (637 s: seen at 645 s).
 
-Trust: the exact exponentials against DOP853; and the overshoot of a set-point step of 10 at a scan instant, which the
-users' own table gives as 0.49, 1.51, 3.07, 3.93 (±0.02) for scans of 0.5, 5, 10, 15 s.
+Trust: the exact exponentials against DOP853; and the overshoot of a set-point step of 10 at a scan instant, which was
+tabled apart from this script as 0.49, 1.51, 3.07, 3.93 (±0.02) for scans of 0.5, 5, 10, 15 s.
 """
 
 from __future__ import annotations

@@ -1,0 +1,53 @@
+"""`loopsim run`."""
+
+from __future__ import annotations
+
+import time
+from pathlib import Path
+
+import click
+
+from loopsim import api
+from loopsim.cli.words import CAUTION
+from loopsim.output.folder import write_run
+from loopsim.output.json_text import json_text
+from loopsim.output.text import render
+
+
+@click.command("run")
+@click.argument("scenarios", nargs=-1, required=True, type=click.Path(path_type=Path))
+@click.option("--strategy", default="", help="Run this strategy only.")
+@click.option("--points", default="", help="Run at this operating point of the plant.")
+@click.option("--out", type=click.Path(path_type=Path), help="Write trends (CSV), pictures, JSON and a JUnit file here.")
+@click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output.")
+@click.option("--interpreted", is_flag=True, help="Run without compilation (always so in this version).")
+@click.option("--cache", type=click.Path(path_type=Path), help="Where compiled plants are kept (not used in this version).")
+@click.option("--timing", is_flag=True, help="Print how long it took to standard error.")
+def command(
+    scenarios: tuple[Path, ...],
+    strategy: str,
+    points: str,
+    out: Path | None,
+    as_json: bool,
+    interpreted: bool,
+    cache: Path | None,
+    timing: bool,
+) -> int:
+    """Run every strategy of the SCENARIOS (files, or folders that hold them), judge the rules, and compare.
+
+    Leaves with 0 when every strategy under `must_pass` passed every rule, 1 when one failed or was inconclusive.
+    """
+    del interpreted, cache
+    begun = time.perf_counter()
+    report = api.run(scenarios, strategy, points)
+    written = write_run(report, out) if out is not None else []
+    if as_json:
+        click.echo(json_text(report.json))
+    else:
+        click.echo(render(report.tables))
+        for path in written:
+            click.echo(f"written: {path}")
+        click.echo(CAUTION)
+    if timing:
+        click.echo(f"{time.perf_counter() - begun:.2f} s", err=True)
+    return report.status
