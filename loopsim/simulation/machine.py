@@ -23,7 +23,7 @@ ENGINE = ("history", "stepping", "advance")
 ECHOES = 256  # echoes that one dead time can hold; more are left to error control
 CAPACITY = 2000  # pieces that the engine can hold before they are put aside
 STEPS = 20000  # steps of one call of the engine
-RELATIVE = 1e-9  # default tolerance of a step
+RELATIVE = 1e-8  # default tolerance of a step
 MOST_STEPS = 50_000_000
 CODES = {
     2: ("step_too_small", "the step size was lost"),

@@ -1,0 +1,1 @@
+"""A small compiler: restricted Python to machine code. It knows nothing of plants."""
