@@ -372,7 +372,6 @@ class _Lowering:
             known = self.module.compiled.get(name)
             wanted = known[2] if known is not None else kinds
             wanted = tuple("f" if have == "i" and want == "f" else have for have, want in zip(kinds, wanted, strict=True))
-            wanted = tuple(_declared(name, place, kind) for place, kind in enumerate(wanted))
             made, returns = self.module.function(name, wanted)
             values = [self.cast(one, kind) for one, kind in zip(arguments, wanted, strict=True)]
             return Value(returns, self.builder.call(made, values))
@@ -403,12 +402,3 @@ class _Lowering:
         made = ir.Function(self.module.module, ir.FunctionType(DOUBLE, [DOUBLE] * LIBRARY[name]), f"loopsim_{name}")
         made.attributes.add("nounwind")
         return made
-
-
-WHOLE_ARGUMENTS = ("k", "w", "v", "side", "event", "live", "task", "budget", "fresh", "base", "end", "at_boundary", "turned")
-
-
-def _declared(name: str, place: int, kind: str) -> str:
-    """The kind of an argument as it is at this call."""
-    del name, place
-    return kind

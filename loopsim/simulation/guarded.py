@@ -1,4 +1,4 @@
-"""The mathematics that the generated text calls: the language's own, under the text's names."""
+"""The mathematics that the text calls when it runs as Python: the language's own, under the text's names."""
 
 from __future__ import annotations
 
@@ -7,12 +7,9 @@ import math
 from loopsim.language import evaluate as language
 
 
-def sticky(a: float, b: float, zone: float, position: float) -> float:
-    """1 for a > b, 0 for a < b, the position as it was where both are equal within rounding and `zone`."""
-    gap = a - b
-    if abs(gap) <= 1e-12 * (abs(a) + abs(b)) + zone:
-        return position
-    return 1.0 if gap > 0.0 else 0.0
+def floor(a: float) -> float:
+    """The greatest whole number not above a, as a float."""
+    return float(math.floor(a)) if math.isfinite(a) else a
 
 
 GUARDED_FUNCTIONS: dict[str, object] = {
@@ -28,10 +25,5 @@ GUARDED_FUNCTIONS: dict[str, object] = {
     "cosine": language.cosine,
     "tangent": language.tangent,
     "hyperbolic_tangent": language.hyperbolic_tangent,
-    "sign": language.sign,
-    "clip": language.clip,
-    "rounded": language.rounded,
-    "smaller": language.smaller,
-    "greater": language.greater,
-    "sticky": sticky,
+    "floor": floor,
 }

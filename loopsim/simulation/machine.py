@@ -5,26 +5,37 @@ Only a `RunState` evolves; it is a value: `copy()` is a snapshot from which the 
 
 from __future__ import annotations
 
+import importlib
 import linecache
 import math
+import os
 from collections.abc import Callable, Iterator
 from copy import deepcopy
 from dataclasses import dataclass, field
 from importlib.resources import files
+from pathlib import Path
 from types import SimpleNamespace
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from loopsim.results import FloatArray
 from loopsim.simulation.guarded import GUARDED_FUNCTIONS
 
-ENGINE = ("history", "stepping", "advance")
+if TYPE_CHECKING:
+    from loopsim.native.build import Native
+
+ENGINE = ("mathematics", "history", "stepping", "advance")
 ECHOES = 256  # echoes that one dead time can hold; more are left to error control
 CAPACITY = 2000  # pieces that the engine can hold before they are put aside
 STEPS = 20000  # steps of one call of the engine
 RELATIVE = 1e-8  # default tolerance of a step
 MOST_STEPS = 50_000_000
+# kinds of the arguments of what is compiled: f number, i whole number, F and I arrays of them, P array of arrays
+STATE = ("F", "I", "F", "F", "F", "F", "F", "I", "F", "P", "F", "F")
+TIMES = ("F", "F", "F", "I", "I", "F", "I", "F")
+ADVANCE = ("f", "i", *STATE, "F", *TIMES)
+CARRY_OUT = ("i", *STATE, *TIMES)
 CODES = {
     2: ("step_too_small", "the step size was lost"),
     3: ("not_finite", "a rate of change is not a finite number"),
@@ -39,6 +50,7 @@ class Machine:
 
     module: SimpleNamespace
     text: str
+    native: Native | None = None
 
     def __getattr__(self, name: str) -> Any:
         return getattr(self.module, name)
@@ -95,11 +107,14 @@ class RunState:
 
     def statistics(self) -> dict[str, int]:
         """Steps taken and tries rejected."""
-        return {"steps": self.j[0], "rejected": self.j[1]}
+        return {"steps": int(self.j[0]), "rejected": int(self.j[1])}
 
 
-def build(model_text: str, name: str) -> Machine:
-    """Engine and model as one module; tracebacks show its lines."""
+def build(model_text: str, name: str, native: bool = True) -> Machine:
+    """Engine and model as one module; tracebacks show its lines.
+
+    `native`: the inner loop as machine code, the same bits; as Python where llvmlite is missing.
+    """
     sizes = _sizes(model_text)
     engine = "\n".join((files("loopsim.simulation.engine") / f"{part}.py").read_text("utf-8") for part in ENGINE)
     constants = f"STRIDE = {2 + 5 * sizes['NW']}\nECHOES = {ECHOES}\n"
@@ -108,7 +123,23 @@ def build(model_text: str, name: str) -> Machine:
     linecache.cache[filename] = (len(text), None, text.splitlines(keepends=True), filename)
     namespace: dict[str, Any] = dict(GUARDED_FUNCTIONS)
     exec(compile(text, filename, "exec"), namespace)
-    return Machine(SimpleNamespace(**namespace), text)
+    return Machine(SimpleNamespace(**namespace), text, _native(text) if native else None)
+
+
+def _native(text: str) -> Native | None:
+    """The compiled inner loop, None where the compiler cannot be had."""
+    try:
+        compiler = importlib.import_module("loopsim.native.build")
+    except ImportError:
+        return None
+    built: Native = compiler.build_native(text, {"advance": ADVANCE, "carry_out": CARRY_OUT}, cache_folder())
+    return built
+
+
+def cache_folder() -> Path:
+    """Where compiled plants are kept: LOOPSIM_CACHE, else the user's cache folder; deleting it is always safe."""
+    named = os.environ.get("LOOPSIM_CACHE")
+    return Path(named) if named else Path(os.environ.get("XDG_CACHE_HOME", Path.home() / ".cache")) / "loopsim"
 
 
 def _sizes(text: str) -> dict[str, int]:
@@ -201,29 +232,26 @@ def start(
     """
     sizes = machine.module
     n = [1, 0, 0, 0, 0, 0, 0, 0, *([0] * sizes.ND)]
+    n[6] = CAPACITY
     offsets, flat = [], list[float]()
     for numbers in z:
         offsets.append(len(flat))
         flat += numbers
     n += offsets + [len(numbers) for numbers in z]
     stride = 2 + 5 * sizes.NW
-    h = [0.0] * (stride * CAPACITY)
-    state = RunState(
+    arrays: list[list[Any]] = [
         [0.0, 1.0, 0.0, 0.0, *([0.0] * 12), *([-1.0] * sizes.NC)],
         [0] * 16,
-        x,
-        m,
-        p,
-        list(first_positions),
-        h,
+        *(x, m, p, list(first_positions)),
+        [0.0] * (stride * CAPACITY),
         n,
-        flat,
+        flat or [0.0],
         [relative, *x, *floors],
-        [[0.0] * sizes.NC, [0.0] * sizes.NC, [0.0] * sizes.NZ],
-        [[0] * sizes.NC, [0] * sizes.NZ],
-        [0.0] * (ECHOES * sizes.ND),
-        [0] * sizes.ND,
-    )
+    ]
+    timing = [_array(machine, [0.0] * count) for count in (sizes.NC, sizes.NC, sizes.NZ)]
+    counters = [_array(machine, [0] * max(count, 1)) for count in (sizes.NC, sizes.NZ)]
+    echoes = _array(machine, [0.0] * (ECHOES * sizes.ND)), _array(machine, [0] * max(sizes.ND, 1))
+    state = RunState(*[_array(machine, values) for values in arrays], timing, counters, *echoes)
     work = _work(machine)
     _first_piece(machine, state, work)
     return state
@@ -232,9 +260,9 @@ def start(
 def _work(machine: Machine) -> tuple[list[list[float]], list[float], list[float]]:
     """Work arrays: stages and states, then w, samples, switch marks, a row; g; c."""
     sizes = machine.module
-    f = [[0.0] * sizes.NX for _ in range(10)]
-    f += [[0.0] * sizes.NW, [0.0] * (5 * sizes.NW), [0.0] * sizes.NB, [0.0] * sizes.NR]
-    return f, [0.0] * sizes.NB, [0.0] * sizes.ND
+    widths = [*([sizes.NX] * 10), sizes.NW, 5 * sizes.NW, sizes.NB, sizes.NR]
+    f = [_array(machine, [0.0] * width) for width in widths]
+    return f, _array(machine, [0.0] * sizes.NB), _array(machine, [0.0] * sizes.ND)
 
 
 def _first_piece(machine: Machine, state: RunState, work: tuple[list[list[float]], list[float], list[float]]) -> None:
@@ -253,9 +281,9 @@ def _first_piece(machine: Machine, state: RunState, work: tuple[list[list[float]
 def boundary(machine: Machine, state: RunState, event: bool) -> None:
     """Carry out the boundary at the present time: after an event's changes, or the scans that fall on it."""
     f, g, c = _work(machine)
-    rows = [0.0] * (2 * (machine.NR + 1))
+    rows = _array(machine, [0.0] * (2 * (machine.NR + 1)))
     state.j[4] = 0
-    machine.carry_out(int(event), *_arguments(state, f, g, c), rows)
+    _call(machine, "carry_out", (int(event), *_arguments(state, f, g, c), rows))
     _keep_rows(machine, state, rows)
 
 
@@ -274,15 +302,16 @@ def advance(
     arguments = list(_arguments(state, f, g, c))
     arguments.insert(12, state.q)
     state.j[6] = 1
-    rows = [0.0] * (_row_count(state, until) * (machine.NR + 1))
+    rows = _array(machine, [0.0] * (_row_count(state, until) * (machine.NR + 1)))
     while True:
         state.j[4] = 0
-        status = machine.module.advance(until, STEPS, *arguments, rows)
+        status = _call(machine, "advance", (until, STEPS, *arguments, rows))
         _keep_rows(machine, state, rows)
         if state.n[4] and math.isnan(state.reversed_at):
             state.reversed_at = state.t
         if status == 1:
             put_aside(machine, state)
+            arguments[6] = state.h
         elif status == 4 and (enough() or state.j[0] > MOST_STEPS):
             return Outcome("budget", "the run takes too long; it was given up")
         elif status != 4:
@@ -293,6 +322,34 @@ def advance(
         return Outcome("condition", index=state.j[5])
     code, sentence = CODES[status]
     return Outcome(code, sentence, _culprit(machine, state, f) if status == 3 else state.j[5])
+
+
+def _call(machine: Machine, name: str, arguments: tuple[Any, ...]) -> int:
+    """Call the inner loop, as Python or compiled."""
+    if machine.native is None:
+        status: int = getattr(machine.module, name)(*arguments)
+        return status
+    held: list[FloatArray] = []
+    return int(machine.native.entries[name](*[_passed(argument, held) for argument in arguments]))
+
+
+def _passed(argument: Any, held: list[Any]) -> Any:
+    """An argument as machine code takes it: arrays by address; `held` keeps addresses alive during the call."""
+    if isinstance(argument, np.ndarray):
+        return argument.ctypes.data
+    if isinstance(argument, list):
+        addresses = np.array([one.ctypes.data for one in argument], dtype=np.uintp)
+        held.append(addresses)
+        return addresses.ctypes.data
+    return argument
+
+
+def _array(machine: Machine, values: list[Any]) -> Any:
+    """Numbers as the inner loop holds them: a list, or a numpy array for machine code."""
+    if machine.native is None:
+        return list(values)
+    whole = bool(values) and isinstance(values[0], int)
+    return np.array(values, dtype=np.int64 if whole else np.float64)
 
 
 def _row_count(state: RunState, until: float) -> int:
@@ -309,21 +366,22 @@ def _culprit(machine: Machine, state: RunState, f: list[list[float]]) -> int:
 def _keep_rows(machine: Machine, state: RunState, rows: list[float]) -> None:
     width, count = machine.NR + 1, state.j[4]
     if count:
-        state.rows.append(np.array(rows[: count * width]).reshape(count, width))
+        state.rows.append(np.array(rows[: count * width], dtype=float).reshape(count, width))
         state.j[4] = 0
 
 
 def put_aside(machine: Machine, state: RunState) -> None:
     """Copy the pieces out and keep only those that a dead time can still reach; the store grows when it must."""
     stride, count = 2 + 5 * machine.NW, state.n[0]
-    done = np.array(state.h[stride : count * stride]).reshape(count - 1, stride)
+    done = np.array(state.h[stride : count * stride], dtype=float).reshape(count - 1, stride)
     state.pieces.append(done[state.n[5] :])
     first = _first_needed(machine, state, count)
-    kept = state.h[first * stride : count * stride]
+    kept = list(state.h[:stride]) + list(state.h[first * stride : count * stride])
     state.n[0] = 1 + count - first
     state.n[5] = count - first
-    room = max(CAPACITY, 2 * state.n[0]) * stride
-    state.h[:] = state.h[:stride] + kept + [0.0] * (room - stride - len(kept))
+    state.n[6] = max(CAPACITY, 2 * state.n[0])
+    room = state.n[6] * stride
+    state.h = _array(machine, kept + [0.0] * (room - len(kept)))
     for k in range(machine.ND):
         state.n[8 + k] = max(0, state.n[8 + k] - first + 1)
 

@@ -169,6 +169,7 @@ def drop_echoes(t, x, m, p, b, h, n, z, c, pending, waiting):
 def carry_out(event, e, j, x, m, p, b, h, n, z, f, g, c, period, phase, every, scans, draws, pending, waiting, rows):
     # the boundary at the present time: scans that are due, switches, latches, echoes, the row of this instant
     t = e[0]
+    turned = -1
     if event == 1:
         timing(p, period, phase, every)
         for k in range(NC):
@@ -264,7 +265,7 @@ def advance(until, budget, e, j, x, m, p, b, h, n, z, f, g, c, q, period, phase,
             if turned >= 0:
                 j[5] = turned
                 return 6
-        if (n[0] + 2) * STRIDE > len(h):
+        if n[0] + 2 > n[6]:
             return 1
         if j[0] >= goal:
             return 4
