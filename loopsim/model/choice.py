@@ -4,29 +4,50 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from functools import lru_cache
 from pathlib import Path
 
 from loopsim.documents.library import Library
 from loopsim.documents.load import read_diagram, read_scenario
 from loopsim.documents.types import Diagram, Given, Scenario
-from loopsim.errors import Problems, Where, fail, nearest
+from loopsim.errors import InputError, Problems, Where, fail, nearest
 from loopsim.model.assemble import assemble
+from loopsim.model.audit import audit
+from loopsim.model.rest import OperatingPoint, rest
 from loopsim.model.types import Model
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Source:
-    """A plant and strategies as read, and the library that they draw on."""
+    """A plant and strategies as read, and the library that they draw on.
+
+    Models and rests are kept once they have been asked for: several scenarios share them.
+    """
 
     name: str
     diagrams: tuple[Diagram, ...]
     library: Library
     values: Mapping[str, Given] = field(default_factory=dict)
 
+    def __hash__(self) -> int:
+        return id(self)
+
+    @lru_cache(maxsize=256)
     def law(self, point: str = "") -> Model:
         """The continuous law of all of it, at an operating point of the plant ('' for its own values)."""
         return assemble(self.diagrams, self.library, law=True, values=self.values, point=point)
 
+    @lru_cache(maxsize=256)
+    def rested(self, point: str = "") -> OperatingPoint:
+        """Where plant and controllers rest together, signs audited. Raises `ComputationError`, `InputError`."""
+        law = self.law(point)
+        found = rest(law)
+        problems = audit(law, found.values)
+        if problems:
+            raise InputError(problems)
+        return found
+
+    @lru_cache(maxsize=256)
     def timed(self, free: frozenset[str] = frozenset(), point: str = "") -> Model:
         """What is simulated; `free` names what events may change."""
         return assemble(self.diagrams, self.library, free=free, values=self.values, point=point)
@@ -38,14 +59,28 @@ class Source:
 
 
 def source_of(plant: Path, strategies: Sequence[Path], name: str = "", asked_at: Where | None = None) -> Source:
-    """Read a plant and strategies; all problems of all files together."""
+    """Read a plant and strategies; all problems of all files together. Files that have not changed are read once."""
+    return _source(plant, tuple(strategies), name or plant.stem, asked_at, _stamps(plant, strategies))
+
+
+def _stamps(plant: Path, strategies: Sequence[Path]) -> tuple[tuple[str, int, int], ...]:
+    """When and how large the files are that a model is made from: these, and the blocks beside the plant."""
+    files = [plant, *strategies, *sorted((plant.parent / "blocks").rglob("*.yaml"))]
+    stats = [(str(path), path.stat()) for path in files if path.is_file()]
+    return tuple((path, stat.st_mtime_ns, stat.st_size) for path, stat in stats)
+
+
+@lru_cache(maxsize=64)
+def _source(
+    plant: Path, strategies: tuple[Path, ...], name: str, asked_at: Where | None, stamps: tuple[tuple[str, int, int], ...]
+) -> Source:
     problems = Problems()
     diagrams: list[Diagram] = []
     for path in (plant, *strategies):
         with problems.collecting():
             diagrams.append(read_diagram(path, asked_at))
     problems.raise_if_any()
-    return Source(name or plant.stem, tuple(diagrams), Library(plant.parent))
+    return Source(name, tuple(diagrams), Library(plant.parent))
 
 
 def scenario_sources(path: Path, only: str = "") -> tuple[Scenario, dict[str, Source]]:
@@ -60,6 +95,6 @@ def scenario_sources(path: Path, only: str = "") -> tuple[Scenario, dict[str, So
             continue
         with problems.collecting():
             paths = [path.parent / one for one in files]
-            found[name] = source_of(path.parent / scenario.plant, paths, name, scenario.where)
+            found[name] = source_of(path.parent / scenario.plant, paths)
     problems.raise_if_any()
     return scenario, found

@@ -57,14 +57,10 @@ def target_of(event: Event) -> str:
     return f"{event.target}.{event.fault}" if event.kind == "fault" else event.target
 
 
-def free_names(events: tuple[Event, ...]) -> frozenset[str]:
-    """Names that events may change."""
-    return frozenset(target_of(event) for event in events)
-
-
-def moving_names(events: tuple[Event, ...]) -> frozenset[str]:
-    """Names that events move between instants."""
-    return frozenset(event.target for event in events if event.kind in ("ramp", "sine", "follow"))
+def free_names(events: tuple[Event, ...], law: Model) -> frozenset[str]:
+    """Names that events may change, boundary values left out: those are never taken for constant."""
+    names = {target_of(event) for event in events}
+    return frozenset(name for name in names if name not in law.slots or law.slots[name].kind not in ("boundary", "input"))
 
 
 def check_target(event: Event, model: Model, problems: Problems) -> bool:

@@ -6,11 +6,9 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 
 from loopsim.documents.types import Scenario
-from loopsim.errors import InputError
 from loopsim.language.units import to_si
-from loopsim.model.audit import audit
 from loopsim.model.choice import Source
-from loopsim.model.rest import OperatingPoint, rest
+from loopsim.model.rest import OperatingPoint
 from loopsim.model.types import Model
 from loopsim.simulation.actions import free_names
 from loopsim.simulation.run import RunResult, prepare, resolve, run
@@ -34,14 +32,9 @@ def case_of(name: str, scenario: Scenario, source: Source, point: str = "") -> C
 
     Raises `InputError` for wrong signs and other mistakes, `ComputationError` where there is no rest.
     """
-    free = free_names(scenario.events)
     law = source.law(point)
-    model = source.timed(free, point)
-    resting = rest(law) if scenario.starts == "steady" else None
-    if resting is not None:
-        problems = audit(law, resting.values)
-        if problems:
-            raise InputError(problems)
+    model = source.timed(free_names(scenario.events, law), point)
+    resting = source.rested(point) if scenario.starts == "steady" else None
     return Case(name, scenario, model, law, resting)
 
 

@@ -12,6 +12,7 @@ import os
 from collections.abc import Callable, Iterator
 from copy import deepcopy
 from dataclasses import dataclass, field
+from functools import lru_cache
 from importlib.resources import files
 from pathlib import Path
 from types import SimpleNamespace
@@ -110,6 +111,7 @@ class RunState:
         return {"steps": int(self.j[0]), "rejected": int(self.j[1])}
 
 
+@lru_cache(maxsize=64)
 def build(model_text: str, name: str, native: bool = True) -> Machine:
     """Engine and model as one module; tracebacks show its lines.
 
@@ -376,12 +378,13 @@ def put_aside(machine: Machine, state: RunState) -> None:
     done = np.array(state.h[stride : count * stride], dtype=float).reshape(count - 1, stride)
     state.pieces.append(done[state.n[5] :])
     first = _first_needed(machine, state, count)
-    kept = list(state.h[:stride]) + list(state.h[first * stride : count * stride])
+    kept = np.concatenate([state.h[:stride], state.h[first * stride : count * stride]])
     state.n[0] = 1 + count - first
     state.n[5] = count - first
     state.n[6] = max(CAPACITY, 2 * state.n[0])
     room = state.n[6] * stride
-    state.h = _array(machine, kept + [0.0] * (room - len(kept)))
+    whole = np.concatenate([kept, np.zeros(room - len(kept))])
+    state.h = whole if machine.native is not None else whole.tolist()
     for k in range(machine.ND):
         state.n[8 + k] = max(0, state.n[8 + k] - first + 1)
 

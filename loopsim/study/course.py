@@ -110,14 +110,15 @@ class Course:
     def path(self) -> FloatArray:
         """Values in order with every turning point between samples: what travel and reversals are counted on."""
         steps = np.diff(self.samples, axis=1)
-        bent = (steps.max(axis=1) > 0) & (steps.min(axis=1) < 0)
-        if not bent.any():
-            return self.samples[:, [0, 4]].ravel()
-        parts = [
-            np.array([value for _, value in _turning(samples)]) if turns else samples[[0, 4]]
-            for samples, turns in zip(self.samples, bent, strict=True)
-        ]
-        return np.concatenate(parts)
+        ends = self.samples[:, [0, 4]].ravel()
+        places: list[int] = []
+        values: list[float] = []
+        for piece in np.flatnonzero((steps.max(axis=1) > 0) & (steps.min(axis=1) < 0)):
+            turns = [value for _, value in _turning(self.samples[piece])[1:-1]]
+            places += [2 * int(piece) + 1] * len(turns)
+            values += turns
+        whole = np.insert(ends, places, values)
+        return whole[np.concatenate([[True], np.diff(whole) != 0])] if len(whole) else whole
 
     def travel(self, play: float = 0.0) -> float:
         """The sum of all movements, jumps included [SI], of something driven through a `play` [SI]."""
@@ -141,7 +142,7 @@ class Course:
     def reversals(self, dead_zone: float) -> int:
         """How often the direction of movement changes, swings up to `dead_zone` [SI] not counted."""
         count, direction, extreme = 0, 0, None
-        for value in self.path():
+        for value in self.path().tolist():
             if extreme is None:
                 extreme = value
             elif direction * (value - extreme) >= 0 and direction:
