@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Collection
+from functools import lru_cache
 
 import networkx as nx
 import numpy as np
@@ -10,7 +11,7 @@ import numpy as np
 from loopsim.errors import Problem
 from loopsim.model.graph import influences, reached_from
 from loopsim.model.numbers import FloatArray, System
-from loopsim.model.rest import eigenvalues
+from loopsim.model.rest import eigenvalues_of
 from loopsim.model.types import Controller, Model
 
 SLOW = 1e-6  # 1/s: a real frequency below every lag and above nought, so that integrating plants have a gain too
@@ -75,34 +76,38 @@ def _without_measurements(graph: nx.DiGraph, model: Model) -> nx.DiGraph:
 
 
 def slow_gain(
-    model: Model, values: dict[str, float], source: str, target: str, opened: Iterable[str], cut: Iterable[str] = ()
+    model: Model, values: dict[str, float], source: str, target: str, opened: Collection[str] = ()
 ) -> float:
-    """d target / d source [SI] at a very low frequency, with the `opened` (and `cut`) names held.
+    """d target / d source [SI] at a very low frequency, with the `opened` names held.
 
     Where the held system is unstable by itself the frequency lies above its growth, so that the sign is the one that
     feedback meets.
     """
-    held = frozenset(opened) | frozenset(cut)
-    system = System(model, free_of_limits=True, opened=held)
-    matrix = system.jacobian(values)
-    slopes = system.carried(values, {source: {0: 1.0}})
+    system = _system(model)
+    matrix = system.jacobian(values, opened)
+    slopes = system.carried(values, {source: {0: 1.0}}, opened)
     by_source = system.rows_by(values, slopes, 1)[:, 0]
     places = {name: {place: 1.0} for place, name in enumerate(system.unknowns)}
-    seen = system.carried(values, places).get(target, {})
+    seen = system.carried(values, places, opened).get(target, {})
     through = np.array([seen.get(place, 0.0) for place in range(len(system.unknowns))])
     direct = slopes.get(target, {}).get(0, 0.0)
     if not len(system.unknowns):
         return direct
     mass = np.array([1.0] * system.states + [0.0] * (len(system.unknowns) - system.states))
-    frequency = _frequency(system, values)
+    frequency = _frequency(system, matrix)
     state = np.linalg.lstsq(np.diag(mass * frequency) - matrix, by_source, rcond=None)[0]
     gain = float(through @ state + direct)
     return gain if abs(gain) > 1e-12 * (float(np.abs(through) @ np.abs(state)) + abs(direct)) else 0.0
 
 
-def _frequency(system: System, values: dict[str, float]) -> float:
-    growth: FloatArray = np.real(eigenvalues(system, values))
-    fastest = float(np.max(growth, initial=0.0))
+@lru_cache(maxsize=8)
+def _system(model: Model) -> System:
+    """The model's equations without limits, made once for all gains."""
+    return System(model, free_of_limits=True)
+
+
+def _frequency(system: System, matrix: FloatArray) -> float:
+    fastest = float(np.max(np.real(eigenvalues_of(system, matrix)), initial=0.0))
     return SLOW if fastest < 1e-9 else 10.0 * fastest
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Collection, Mapping
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -23,6 +23,21 @@ def relaxed(tree: Expression) -> Expression:
     return transform(tree, lambda node: node.arguments[0] if isinstance(node, Call) and node.function == "clip" else node)
 
 
+@dataclass(frozen=True, slots=True)
+class Line:
+    """One assignment or residual with its slopes by the names that it reads."""
+
+    name: str
+    tree: Expression
+    slopes: tuple[tuple[str, Expression], ...]
+
+
+def line_of(name: str, tree: Expression) -> Line:
+    """A line with its derivatives, those that are nought left out."""
+    slopes = [(one, derivative(tree, one)) for one in sorted(names_in(tree))]
+    return Line(name, tree, tuple((one, slope) for one, slope in slopes if slope != Number(0.0)))
+
+
 @dataclass(slots=True)
 class System:
     """`rate(u) = 0` for the states and residuals of loops u of a law model.
@@ -33,16 +48,14 @@ class System:
 
     model: Model
     free_of_limits: bool = False
-    opened: frozenset[str] = frozenset()
     unknowns: list[str] = field(default_factory=list)
     states: int = 0
-    _steps: list[Assignment] = field(default_factory=list)
-    _rows: list[Expression] = field(default_factory=list)
-    _slopes: dict[Expression, list[tuple[str, Expression]]] = field(default_factory=dict)
+    _steps: list[Line] = field(default_factory=list)
+    _rows: list[Line] = field(default_factory=list)
     _settled: dict[str, float | Table] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
-        change = relaxed if self.free_of_limits else (lambda tree: tree)
+        change: Callable[[Expression], Expression] = relaxed if self.free_of_limits else (lambda tree: tree)
         model = self.model
         self.unknowns = list(model.states)
         self.states = len(self.unknowns)
@@ -51,16 +64,12 @@ class System:
         for step in ordered(model, wanted):
             if isinstance(step, Loop):
                 self.unknowns += step.unknowns
-                self._steps += [self._changed(one, change) for one in step.inner]
+                self._steps += [line_of(one.name, change(one.tree)) for one in step.inner]
                 rows += [change(one) for one in step.residuals]
             elif isinstance(step, Assignment):
-                self._steps.append(self._changed(step, change))
-        self._rows = rows
+                self._steps.append(line_of(step.name, change(step.tree)))
+        self._rows = [line_of("", row) for row in rows]
         self._settled = {name: slot.value for name, slot in model.slots.items()} | dict(model.tables)
-
-    def _changed(self, step: Assignment, change: object) -> Assignment:
-        tree = change(step.tree)  # type: ignore[operator]
-        return Assignment(step.name, step.tag, tree, step.where)
 
     def values(self, u: FloatArray, slots: Mapping[str, float] | None = None) -> dict[str, float]:
         """Every name's value at u (SI)."""
@@ -68,30 +77,27 @@ class System:
         values.update(slots or {})
         values.update(zip(self.unknowns, u.tolist(), strict=True))
         for step in self._steps:
-            values[step.name] = float(evaluate(step.tree, values))
+            values[step.name] = evaluate(step.tree, values)
         return values  # type: ignore[return-value]
 
     def residuals(self, values: Mapping[str, float]) -> FloatArray:
         """Rates of the states and residuals of the loops at these values."""
-        return np.array([float(evaluate(row, values)) for row in self._rows])
+        return np.array([evaluate(row.tree, values) for row in self._rows])
 
-    def jacobian(self, values: Mapping[str, float]) -> FloatArray:
-        """d residuals / d u, shape (n, n)."""
+    def jacobian(self, values: Mapping[str, float], held: Collection[str] = ()) -> FloatArray:
+        """d residuals / d u, shape (n, n); names in `held` are taken for constant."""
         seeds = {name: {place: 1.0} for place, name in enumerate(self.unknowns)}
-        slopes = self.carried(values, seeds)
-        matrix = np.zeros((len(self._rows), len(self.unknowns)))
-        for row, tree in enumerate(self._rows):
-            for place, slope in self._total(tree, values, slopes).items():
-                matrix[row, place] = slope
-        return matrix
+        return self.rows_by(values, self.carried(values, seeds, held), len(self.unknowns))
 
-    def carried(self, values: Mapping[str, float], seeds: dict[str, Slopes]) -> dict[str, Slopes]:
-        """Slopes of every name with respect to the seeded places, carried through all assignments."""
+    def carried(
+        self, values: Mapping[str, float], seeds: dict[str, Slopes], held: Collection[str] = ()
+    ) -> dict[str, Slopes]:
+        """Slopes of every name with respect to the seeded places, carried through all assignments but the held ones."""
         slopes = dict(seeds)
         for step in self._steps:
-            if step.name in self.opened:
+            if step.name in held:
                 continue
-            total = self._total(step.tree, values, slopes)
+            total = _total(step, values, slopes)
             if total:
                 slopes[step.name] = {**slopes.get(step.name, {}), **total}
         return slopes
@@ -99,24 +105,10 @@ class System:
     def rows_by(self, values: Mapping[str, float], slopes: dict[str, Slopes], columns: int) -> FloatArray:
         """d residuals / d seeded places, shape (n, columns)."""
         matrix = np.zeros((len(self._rows), columns))
-        for row, tree in enumerate(self._rows):
-            for place, slope in self._total(tree, values, slopes).items():
+        for row, line in enumerate(self._rows):
+            for place, slope in _total(line, values, slopes).items():
                 matrix[row, place] = slope
         return matrix
-
-    def _total(self, tree: Expression, values: Mapping[str, float], slopes: dict[str, Slopes]) -> Slopes:
-        if tree not in self._slopes:
-            partials = [(name, derivative(tree, name)) for name in sorted(names_in(tree))]
-            self._slopes[tree] = [(name, one) for name, one in partials if one != Number(0.0)]
-        total: Slopes = {}
-        for name, partial in self._slopes[tree]:
-            below = slopes.get(name)
-            if not below:
-                continue
-            factor = float(evaluate(partial, values))
-            for place, slope in below.items():
-                total[place] = total.get(place, 0.0) + factor * slope
-        return total
 
     def starts(self) -> FloatArray:
         """Where the search begins: the starts of the states, evaluated as far as they can be told."""
@@ -141,3 +133,16 @@ class System:
             if np.array_equal(before, u, equal_nan=True):
                 break
         return np.nan_to_num(u, nan=0.0, posinf=0.0, neginf=0.0)
+
+
+def _total(line: Line, values: Mapping[str, float], slopes: dict[str, Slopes]) -> Slopes:
+    """The slopes of a line from those of the names that it reads."""
+    total: Slopes = {}
+    for name, partial in line.slopes:
+        below = slopes.get(name)
+        if not below:
+            continue
+        factor = evaluate(partial, values)
+        for place, slope in below.items():
+            total[place] = total.get(place, 0.0) + factor * slope
+    return total

@@ -194,7 +194,12 @@ def _explained(model: Model, controller: Controller, measured: float, wish: _Wis
 
 def eigenvalues(system: System, values: dict[str, float]) -> FloatArray:
     """Eigenvalues [1/s] of the continuous states at a point, loops of algebra solved; complex, shape (states,)."""
-    matrix, count = system.jacobian(values), system.states
+    return eigenvalues_of(system, system.jacobian(values))
+
+
+def eigenvalues_of(system: System, matrix: FloatArray) -> FloatArray:
+    """Eigenvalues [1/s] of the continuous states from the matrix of slopes."""
+    count = system.states
     inner = matrix[:count, :count]
     if matrix.shape[0] > count:
         below = np.linalg.solve(matrix[count:, count:], matrix[count:, :count])

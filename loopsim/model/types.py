@@ -186,7 +186,7 @@ class Controller:
     where: Where
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Model:
     """A plant with its strategies, ready to be ordered, solved, linearised and run.
 
