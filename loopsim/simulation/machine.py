@@ -260,9 +260,9 @@ def start(
 
 
 def _work(machine: Machine) -> tuple[list[list[float]], list[float], list[float]]:
-    """Work arrays: stages and states, then w, samples, switch marks, a row; g; c."""
+    """Work arrays: stages and states, then w, samples, switch marks, a row, rates and states on a tie; g; c."""
     sizes = machine.module
-    widths = [*([sizes.NX] * 10), sizes.NW, 5 * sizes.NW, sizes.NB, sizes.NR]
+    widths = [*([sizes.NX] * 10), sizes.NW, 5 * sizes.NW, sizes.NB, sizes.NR, sizes.NX, sizes.NX, sizes.NX, 1]
     f = [_array(machine, [0.0] * width) for width in widths]
     return f, _array(machine, [0.0] * sizes.NB), _array(machine, [0.0] * sizes.ND)
 

@@ -1,7 +1,10 @@
 # Restricted Python: from boundary to boundary. See DEVELOPERS.md, "The generated text".
-# e: floats - 0 time, 1 proposed step, 2 record interval (0: none), 3 time of the last flips, 16 + k last execution of task k
+# e: floats - 0 time, 1 proposed step, 2 record interval (0: none), 3 time of the last flips, 4 of the last flip of the
+#    switch in j[8], 5 last step that ended without a flip,
+#    6 span over which a tie is looked at, 16 + k last execution of task k
+# n[7]: 1 + the switch that rests on its tie, 0 for none
 # j: ints - 0 steps, 1 rejections, 2 flips at one place, 3 number of the next row, 4 rows written, 5 index that a status
-#    speaks of, 6 rates at t are stale, 7 the state at t is a boundary still to be carried out
+#    speaks of, 6 rates at t are stale, 7 the state at t is a boundary still to be carried out, 8 and 9 the switch that turned last and how often at one place
 # Statuses: 0 reached, 1 pieces full, 2 step too small, 3 not finite, 4 steps used up, 5 equation unsolved, 6 condition,
 # 7 chatter
 
@@ -59,13 +62,64 @@ def echo_share(t, step, x, m, p, b, h, n, z, f, c, pending, waiting):
     return found
 
 
+def wants_to_turn(i, b, n, g):
+    # whether a switch stands against what it compares; one that rests on its tie does not
+    if i == n[7] - 1:
+        return 0
+    if g[i] > 0.0:
+        return 1 if b[i] < 0.5 else 0
+    if g[i] < 0.0:
+        return 1 if b[i] > 0.5 else 0
+    return 0
+
+
+def leave_share(t, step, x, m, p, b, h, n, z, f, g):
+    # the share of the step at which a switch leaves its tie, 2.0 when it stays
+    y = f[16]
+    share = share_of(t + step, f[8], m, p, b, h, n, z, f, g)
+    if share >= 0.0 and share <= 1.0:
+        return 2.0
+    low = 0.0
+    high = 1.0
+    count = 0
+    while count < 60 and high - low > 1e-14:
+        count += 1
+        middle = 0.5 * (low + high)
+        dense(middle, step, x, f, y)
+        share = share_of(t + middle * step, y, m, p, b, h, n, z, f, g)
+        if share >= 0.0 and share <= 1.0:
+            low = middle
+        else:
+            high = middle
+    return high
+
+
+def watch_ties(now, e, j, n, f):
+    # a switch that turns again and again at one place rests on its tie from now on
+    marks = f[12]
+    for i in range(NB - NQ):
+        if marks[i] > 0.5:
+            if j[8] == i + 1 and now - e[4] <= 1e-4 * e[5]:
+                j[9] = j[9] + 1
+            else:
+                j[9] = 0
+            j[8] = i + 1
+            e[4] = now
+            if j[9] >= 3 and n[7] == 0:
+                n[7] = i + 1
+                j[9] = 0
+                f[17][0] = greater(1e-3 * e[5], 1e-6)
+                e[6] = f[17][0]
+    return 0.0
+
+
 def flip_share(t, step, x, m, p, b, h, n, z, f, g):
     # the share of the step at which the first switch turns over, 2.0 when none does
     y = f[7]
     switches(0, t + step, -1, f[8], m, p, b, h, n, z, g)
     wrong = 0
     for i in range(NB):
-        if (g[i] > 0.0 and b[i] < 0.5) or (g[i] < 0.0 and b[i] > 0.5):
+        if wants_to_turn(i, b, n, g) == 1:
             wrong = 1
     if wrong == 0:
         return 2.0
@@ -79,7 +133,7 @@ def flip_share(t, step, x, m, p, b, h, n, z, f, g):
         switches(0, t + share * step, 0, y, m, p, b, h, n, z, g)
         wrong = 0
         for i in range(NB):
-            if (g[i] > 0.0 and b[i] < 0.5) or (g[i] < 0.0 and b[i] > 0.5):
+            if wants_to_turn(i, b, n, g) == 1:
                 wrong = 1
         if wrong == 1:
             high = share
@@ -95,7 +149,7 @@ def mark_flips(share, t, step, x, m, p, b, h, n, z, f, g):
     dense(share, step, x, f, y)
     switches(0, t + share * step, 0, y, m, p, b, h, n, z, g)
     for i in range(NB):
-        marks[i] = 1.0 if (g[i] > 0.0 and b[i] < 0.5) or (g[i] < 0.0 and b[i] > 0.5) else 0.0
+        marks[i] = 1.0 if wants_to_turn(i, b, n, g) == 1 else 0.0
     return 0.0
 
 
@@ -191,6 +245,7 @@ def carry_out(event, e, j, x, m, p, b, h, n, z, f, g, c, period, phase, every, s
         if every[k] > 0.0:
             while draws[k] * every[k] <= t + tie_of(t):
                 draws[k] = draws[k] + 1
+    n[7] = 0
     turned = set_switches(t, x, m, p, b, h, n, z, g, f)
     latches(t, 1, x, m, p, b, h, n, z)
     if ND > 0:
@@ -258,6 +313,7 @@ def shortest_lag(t, c):
 
 def advance(until, budget, e, j, x, m, p, b, h, n, z, f, g, c, q, period, phase, every, scans, draws, pending, waiting, rows):
     goal = j[0] + budget
+    f[17][0] = e[6]
     while e[0] < until - tie_of(until):
         t = e[0]
         if j[7] == 1:
@@ -289,7 +345,7 @@ def advance(until, budget, e, j, x, m, p, b, h, n, z, f, g, c, q, period, phase,
                 j[7] = 1
             continue
         n[1] = 0
-        error = step_with_history(t, step, j[6], x, m, p, b, h, n, z, f, q)
+        error = step_with_history(t, step, j[6], x, m, p, b, h, n, z, f, g, q)
         if not (error <= 1.0) or n[1] > 0:
             j[1] = j[1] + 1
             j[6] = 0 if error == error else 1
@@ -320,20 +376,30 @@ def advance(until, budget, e, j, x, m, p, b, h, n, z, f, g, c, q, period, phase,
                 share = first
                 flipping = 1
                 mark_flips(first, t, step, x, m, p, b, h, n, z, f, g)
+        leaving = 0
+        if n[7] > 0:
+            first = leave_share(t, step, x, m, p, b, h, n, z, f, g)
+            if first <= share and first < 2.0:
+                share = first
+                leaving = 1
+                flipping = 0
         boundary = cut
         if share < 1.0:
             step = step * share
             boundary = 1 if echo <= share else 0
             cut = 0
             if step > 1e-13 * (1.0 + abs(t)):
-                step_with_history(t, step, 0, x, m, p, b, h, n, z, f, q)
+                step_with_history(t, step, 0, x, m, p, b, h, n, z, f, g, q)
         if step > 1e-13 * (1.0 + abs(t)):
             commit(t, step, boundary, x, m, p, b, h, n, z, f, rows, j, e)
             e[0] = limit if cut == 1 else t + step
+            if flipping == 0:
+                e[5] = step
         e[1] = proposal
         turned = -1
         if flipping == 1:
             turned = flip_marked(b, f, j)
+            watch_ties(e[0], e, j, n, f)
             j[6] = 1
             if e[0] - e[3] > 1e-6 * (until - e[3]) + 1e-9:
                 e[3] = e[0]
@@ -341,6 +407,11 @@ def advance(until, budget, e, j, x, m, p, b, h, n, z, f, g, c, q, period, phase,
             j[2] = j[2] + 1
             if j[2] > 2000:
                 return 7
+        if leaving == 1:
+            share = share_of(e[0], x, m, p, b, h, n, z, f, g)
+            b[n[7] - 1] = 1.0 if share > 0.5 else 0.0
+            n[7] = 0
+            j[6] = 1
         latches(e[0], 1, x, m, p, b, h, n, z)
         if boundary == 1 and e[0] < until - tie_of(until):
             j[7] = 1

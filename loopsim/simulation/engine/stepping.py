@@ -3,7 +3,44 @@
 # Solving Ordinary Differential Equations I, II.6. The sums over states (stage_2 … dense) are written out per model.
 
 
-def attempt(t, step, fresh, x, m, p, b, h, n, z, f, q):
+def share_of(t, x, m, p, b, h, n, z, f, g):
+    # a switch that both sides push against: the share of its upper position that keeps it on its tie (Filippov's mean)
+    place = n[7] - 1
+    span = f[17][0]
+    upper = f[14]
+    lower = f[9]
+    y = f[15]
+    switches(0, t, 0, x, m, p, b, h, n, z, g)
+    gap = g[place]
+    b[place] = 0.0
+    rates(t, 0, x, m, p, b, h, n, z, lower)
+    for i in range(NX):
+        y[i] = x[i] + span * lower[i]
+    switches(0, t + span, 0, y, m, p, b, h, n, z, g)
+    below = (g[place] - gap) / span
+    b[place] = 1.0
+    rates(t, 0, x, m, p, b, h, n, z, upper)
+    for i in range(NX):
+        y[i] = x[i] + span * upper[i]
+    switches(0, t + span, 0, y, m, p, b, h, n, z, g)
+    above = (g[place] - gap) / span
+    return div(-below, above - below)
+
+
+def field(t, side, x, m, p, b, h, n, z, f, g, dx):
+    # the rates; on a tie that both sides push against, their mean
+    if n[7] == 0:
+        rates(t, side, x, m, p, b, h, n, z, dx)
+        return 0.0
+    share = share_of(t, x, m, p, b, h, n, z, f, g)
+    upper = f[14]
+    lower = f[9]
+    for i in range(NX):
+        dx[i] = lower[i] + share * (upper[i] - lower[i])
+    return share
+
+
+def attempt(t, step, fresh, x, m, p, b, h, n, z, f, g, q):
     # one try from t over `step`; f holds the work arrays one after the other, q the tolerances; returns the error norm
     k1 = f[0]
     k2 = f[1]
@@ -15,19 +52,19 @@ def attempt(t, step, fresh, x, m, p, b, h, n, z, f, q):
     y = f[7]
     new = f[8]
     if fresh == 1:
-        rates(t, 1, x, m, p, b, h, n, z, k1)
+        field(t, 1, x, m, p, b, h, n, z, f, g, k1)
     stage_2(x, k1, step, y)
-    rates(t + 0.2 * step, 0, y, m, p, b, h, n, z, k2)
+    field(t + 0.2 * step, 0, y, m, p, b, h, n, z, f, g, k2)
     stage_3(x, k1, k2, step, y)
-    rates(t + 0.3 * step, 0, y, m, p, b, h, n, z, k3)
+    field(t + 0.3 * step, 0, y, m, p, b, h, n, z, f, g, k3)
     stage_4(x, k1, k2, k3, step, y)
-    rates(t + 0.8 * step, 0, y, m, p, b, h, n, z, k4)
+    field(t + 0.8 * step, 0, y, m, p, b, h, n, z, f, g, k4)
     stage_5(x, k1, k2, k3, k4, step, y)
-    rates(t + step * 8.0 / 9.0, 0, y, m, p, b, h, n, z, k5)
+    field(t + step * 8.0 / 9.0, 0, y, m, p, b, h, n, z, f, g, k5)
     stage_6(x, k1, k2, k3, k4, k5, step, y)
-    rates(t + step, -1, y, m, p, b, h, n, z, k6)
+    field(t + step, -1, y, m, p, b, h, n, z, f, g, k6)
     stage_7(x, k1, k3, k4, k5, k6, step, new)
-    rates(t + step, -1, new, m, p, b, h, n, z, k7)
+    field(t + step, -1, new, m, p, b, h, n, z, f, g, k7)
     return error_norm(x, new, k1, k3, k4, k5, k6, k7, step, q)
 
 
@@ -54,11 +91,11 @@ def sample(t, step, x, m, p, b, h, n, z, f):
     return 0.0
 
 
-def step_with_history(t, step, fresh, x, m, p, b, h, n, z, f, q):
+def step_with_history(t, step, fresh, x, m, p, b, h, n, z, f, g, q):
     # a try whose dead times may reach into the step itself: repeated with the step's own samples until they stand still
     n[2] = 0
     n[3] = 0
-    error = attempt(t, step, fresh, x, m, p, b, h, n, z, f, q)
+    error = attempt(t, step, fresh, x, m, p, b, h, n, z, f, g, q)
     if NW > 0:
         sample(t, step, x, m, p, b, h, n, z, f)
     if ND == 0 or n[3] == 0:
@@ -72,7 +109,7 @@ def step_with_history(t, step, fresh, x, m, p, b, h, n, z, f, q):
         for i in range(5 * NW):
             old[i] = h[base + i]
         n[2] = 1
-        error = attempt(t, step, fresh, x, m, p, b, h, n, z, f, q)
+        error = attempt(t, step, fresh, x, m, p, b, h, n, z, f, g, q)
         sample(t, step, x, m, p, b, h, n, z, f)
         change = 0.0
         for i in range(5 * NW):
