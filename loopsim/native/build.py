@@ -17,7 +17,7 @@ import llvmlite.binding as llvm
 
 from loopsim.native.compiler import LIBRARY, Module
 
-VERSION = "1"
+VERSION = "2"
 C_NAMES = {
     "power": "pow",
     "exponential": "exp",

@@ -91,29 +91,34 @@ class Module:
         made.linkage = "external"
 
     def _returned(self, node: ast.FunctionDef, kinds: dict[str, str]) -> str:
-        """Float unless all returns are whole numbers by their form."""
-        whole = {name for name, kind in kinds.items() if kind == "i"} | _whole_names(node)
+        """Float unless all returns are whole numbers."""
+        return "i" if self._gives_whole(node, {name for name, kind in kinds.items() if kind == "i"}) else "f"
+
+    def _gives_whole(self, node: ast.FunctionDef, known: set[str]) -> bool:
+        whole = known | self._whole_names(node)
         returns = [one.value for one in ast.walk(node) if isinstance(one, ast.Return) and one.value is not None]
-        return "i" if returns and all(_is_whole(one, whole) for one in returns) else "f"
+        return bool(returns) and all(self._is_whole(one, whole) for one in returns)
 
+    def _whole_names(self, node: ast.FunctionDef) -> set[str]:
+        """Locals that hold whole numbers by their first assignment."""
+        found: dict[str, bool] = {}
+        assigned = [one for one in ast.walk(node) if isinstance(one, ast.Assign) and isinstance(one.targets[0], ast.Name)]
+        for one in sorted(assigned, key=lambda one: one.lineno):
+            assert isinstance(one.targets[0], ast.Name)
+            found.setdefault(one.targets[0].id, self._is_whole(one.value, {name for name, is_so in found.items() if is_so}))
+        return {name for name, is_so in found.items() if is_so}
 
-def _whole_names(node: ast.FunctionDef) -> set[str]:
-    """Locals that hold whole numbers by their first assignment."""
-    found: dict[str, bool] = {}
-    for one in ast.walk(node):
-        if isinstance(one, ast.Assign) and isinstance(one.targets[0], ast.Name):
-            found.setdefault(one.targets[0].id, _is_whole(one.value, set()))
-    return {name for name, whole in found.items() if whole}
-
-
-def _is_whole(node: ast.expr, names: set[str]) -> bool:
-    if isinstance(node, ast.Constant):
-        return isinstance(node.value, int)
-    if isinstance(node, ast.UnaryOp):
-        return _is_whole(node.operand, names)
-    if isinstance(node, ast.IfExp):
-        return _is_whole(node.body, names) and _is_whole(node.orelse, names)
-    return isinstance(node, ast.Name) and node.id in names
+    def _is_whole(self, node: ast.expr, names: set[str]) -> bool:
+        if isinstance(node, ast.Constant):
+            return isinstance(node.value, int)
+        if isinstance(node, ast.UnaryOp):
+            return self._is_whole(node.operand, names)
+        if isinstance(node, ast.IfExp):
+            return self._is_whole(node.body, names) and self._is_whole(node.orelse, names)
+        if isinstance(node, ast.Call) and isinstance(node.func, ast.Name):
+            called = self.functions.get(node.func.id)
+            return node.func.id == "int" or (called is not None and self._gives_whole(called, set()))
+        return isinstance(node, ast.Name) and node.id in names
 
 
 class _Lowering:

@@ -26,7 +26,7 @@ from loopsim.simulation.guarded import GUARDED_FUNCTIONS
 if TYPE_CHECKING:
     from loopsim.native.build import Native
 
-ENGINE = ("mathematics", "history", "stepping", "advance")
+ENGINE = ("mathematics", "history", "stepping", "switching", "echoes", "recording", "advance")
 ECHOES = 256  # echoes that one dead time can hold; more are left to error control
 CAPACITY = 2000  # pieces that the engine can hold before they are put aside
 STEPS = 20000  # steps of one call of the engine
