@@ -176,7 +176,9 @@ def _judgeable(case: Case, result: RunResult) -> Run:
         )
     names = {name for rule in case.scenario.accept for name in _rule_names(rule)}
     lacking = frozenset(name for name in names if not _knows(model, name))
-    return Run(case.name, case.scenario, result.trends, tuple(happenings), loops_of(model), lacking, "", model.air_pressure)
+    return Run(
+        case.name, case.scenario, result.trends, tuple(happenings), loops_of(model), lacking, "", model.air_pressure
+    )
 
 
 def _reached(model: Model, name: str, reached: frozenset[str]) -> bool:

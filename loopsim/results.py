@@ -101,7 +101,7 @@ class Pieces:
 
 @dataclass(frozen=True, slots=True)
 class Trends:
-    """The result of a time run: one time base, a column in SI for each signal, units for people, full-resolution pieces.
+    """The result of a time run: one time base, a column in SI for each signal, units for people, and pieces.
 
     `columns[name]` has the shape of `time`; `units[name]` says how people read it.
     """

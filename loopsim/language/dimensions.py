@@ -70,7 +70,16 @@ NAMED: dict[str, dict[str, int]] = {
     "Pa": {"kg": 1, "m": -1, "s": -2},
     "N": {"kg": 1, "m": 1, "s": -2},
 }
-DENOMINATORS: dict[str, dict[str, int]] = {"": {}, "K": {"K": 1}, "(m^2*K)": {"m": 2, "K": 1}, "m^3": {"m": 3}, "kg": {"kg": 1}, "(kg*K)": {"kg": 1, "K": 1}, "mol": {"mol": 1}, "(mol*K)": {"mol": 1, "K": 1}}  # fmt: skip
+DENOMINATORS: dict[str, dict[str, int]] = {
+    "": {},
+    "K": {"K": 1},
+    "(m^2*K)": {"m": 2, "K": 1},
+    "m^3": {"m": 3},
+    "kg": {"kg": 1},
+    "(kg*K)": {"kg": 1, "K": 1},
+    "mol": {"mol": 1},
+    "(mol*K)": {"mol": 1, "K": 1},
+}
 
 
 def unknown(name: str) -> Dimension:

@@ -22,7 +22,7 @@ class Function:
 FUNCTIONS: dict[str, Function] = {
     function.name: function
     for function in (
-        *(Function(name, 1, 1) for name in "sqrt exp log log10 sin cos tan tanh abs sign".split()),
+        *(Function(name, 1, 1) for name in ["sqrt", "exp", "log", "log10", "sin", "cos", "tan", "tanh", "abs", "sign"]),
         Function("min", 1, None),
         Function("max", 1, None),
         Function("sum", 1, 1),

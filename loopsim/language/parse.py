@@ -72,14 +72,18 @@ def parse_key(text: str) -> tuple[str, Index | None]:
 def _index(text: str, at: int) -> Index:
     match = re.fullmatch(r"\s*(?:([A-Za-z_]\w*)\s*)?(?:([+-]?)\s*(\d+))?\s*", text)
     if match is None or not text.strip() or (match[1] and match[3] and not match[2]):
-        raise FormulaError(f"'[{text}]' is not an index", at, "write a letter, a number, or a letter with + or - a number")
+        raise FormulaError(
+            f"'[{text}]' is not an index", at, "write a letter, a number, or a letter with + or - a number"
+        )
     offset = int(match[3] or 0) * (-1 if match[2] == "-" else 1)
     return Index(match[1], offset)
 
 
 def _tokens(text: str) -> list[_Token]:
     if len(text) > LONGEST:
-        raise FormulaError(f"a formula of {len(text)} characters", 0, f"{LONGEST} is the most; use `let` for parts of it")
+        raise FormulaError(
+            f"a formula of {len(text)} characters", 0, f"{LONGEST} is the most; use `let` for parts of it"
+        )
     found, place = [], 0
     while text[place:].strip():
         match = TOKEN.match(text, place)
@@ -130,7 +134,9 @@ class _Parser:
     def formula(self) -> Expression:
         self.depth += 1
         if self.depth > DEEPEST:
-            raise FormulaError(f"more than {DEEPEST} parentheses inside each other", self.next.at, "use `let` for parts of it")
+            raise FormulaError(
+                f"more than {DEEPEST} parentheses inside each other", self.next.at, "use `let` for parts of it"
+            )
         tree = self._binary(("or",), self._and)
         self.depth -= 1
         return tree
@@ -180,7 +186,7 @@ class _Parser:
 
     def _power(self) -> Expression:
         base = self._atom()
-        if not (self.next.text == "^"):
+        if self.next.text != "^":
             return base
         token = self.take()
         self.depth += 1

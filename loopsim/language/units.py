@@ -10,7 +10,7 @@ import difflib
 import re
 from dataclasses import dataclass, replace
 from fractions import Fraction
-from functools import cache, lru_cache
+from functools import cache
 from typing import TYPE_CHECKING
 
 from loopsim.language.dimensions import Dimension
@@ -116,10 +116,13 @@ psi = 6894.757293168361 * Pa
 gal = 0.003785411784 * m ** 3
 gpm = gal / min
 """
+LONG_NAMES = (
+    *("kilogram", "meter", "second", "kelvin", "mole", "ampere", "radian"),
+    *("mass", "length", "time", "temperature", "substance", "current", "percent", "dimensionless_number"),
+)
 ALLOWED = frozenset(
     name for line in DEFINITIONS.split("\n") for name in re.split(r"\W+", line) if name and not name[0].isdigit()
-) - {"kilogram", "meter", "second", "kelvin", "mole", "ampere", "radian", "mass", "length", "time", "temperature", "substance",
-     "current", "percent", "dimensionless_number"}  # fmt: skip
+) - set(LONG_NAMES)
 SYMBOLS = {"[mass]": "kg", "[length]": "m", "[time]": "s", "[temperature]": "K", "[substance]": "mol", "[current]": "A"}
 POINTS = {
     "degC": ("K", 1.0, KELVIN),
@@ -157,17 +160,17 @@ CURES = {
 
 
 @cache
-def _registry() -> UnitRegistry:
+def _registry() -> UnitRegistry[float]:
     """A registry that knows the allowed units and nothing else."""
     import pint
 
-    registry = pint.UnitRegistry(None, autoconvert_offset_to_baseunit=False)
+    registry: UnitRegistry[float] = pint.UnitRegistry(None, autoconvert_offset_to_baseunit=False)
     for line in DEFINITIONS.strip().splitlines():
         registry.define(line)
     return registry
 
 
-@lru_cache(maxsize=None)
+@cache
 def parse_unit(text: str) -> Unit:
     """A unit from its text, such as `m^3/h`, `kJ/(kg*K)`, `degC`, `bar(g)`, `%`. Raises `UnitError` with the cure."""
     wanted = text.strip()
@@ -196,7 +199,7 @@ def _compound(text: str) -> Unit:
         one = _registry().Quantity(1.0, _registry().parse_units(plain)).to_base_units()
     except Exception:
         raise UnitError(f"'{text}' is not a unit", "join units with * and /, powers with ^, as in kJ/(kg*K)") from None
-    powers = {SYMBOLS[name]: Fraction(power).limit_denominator(100) for name, power in one.dimensionality.items()}
+    powers = {SYMBOLS[name]: Fraction(str(power)).limit_denominator(100) for name, power in one.dimensionality.items()}
     return Unit(text, float(one.magnitude), 0.0, Dimension.of(powers))
 
 
@@ -218,7 +221,11 @@ def _cure(name: str) -> str:
     if name in CURES:
         return CURES[name]
     close = difflib.get_close_matches(name, [*ALLOWED, *POINTS], n=3, cutoff=0.5)
-    return "did you mean " + " or ".join(close) + "?" if close else "use a unit of process engineering, such as m^3/h or kW"
+    return (
+        "did you mean " + " or ".join(close) + "?"
+        if close
+        else "use a unit of process engineering, such as m^3/h or kW"
+    )
 
 
 def to_si(value: float, unit: Unit, air_pressure: float = ATMOSPHERE) -> float:

@@ -223,5 +223,3 @@ def _finished(draft: Draft) -> Model:
         assumed=tuple(draft.assumed),
         notes=(*layout.notes, *notes),
     )
-
-

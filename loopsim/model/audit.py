@@ -24,7 +24,9 @@ def audit(model: Model, values: dict[str, float]) -> list[Problem]:
     for controller in model.controllers:
         if not _automatic(model, controller):
             continue
-        problem = _loop_problem(model, values, graph, controller) or _feedforward_problem(model, values, graph, controller)
+        problem = _loop_problem(model, values, graph, controller) or _feedforward_problem(
+            model, values, graph, controller
+        )
         if problem is not None:
             problems.append(problem)
     return problems
@@ -36,7 +38,7 @@ def _automatic(model: Model, controller: Controller) -> bool:
 
 
 def _loop_problem(
-    model: Model, values: dict[str, float], graph: nx.DiGraph, controller: Controller
+    model: Model, values: dict[str, float], graph: nx.DiGraph[str], controller: Controller
 ) -> Problem | None:
     tag, opened = controller.tag, _opened(model, graph, controller)
     gain = slow_gain(model, values, controller.out, controller.pv, opened)
@@ -61,23 +63,21 @@ def _loop_problem(
     )
 
 
-def _opened(model: Model, graph: nx.DiGraph, controller: Controller) -> frozenset[str]:
+def _opened(model: Model, graph: nx.DiGraph[str], controller: Controller) -> frozenset[str]:
     """The outputs held while a loop is looked at: its own, and those of controllers that it does not drive."""
     below = reached_from(_without_measurements(graph, model), controller.out)
     others = [one for one in model.controllers if one.tag != controller.tag and one.sp not in below]
     return frozenset({controller.out, *(one.out for one in others)})
 
 
-def _without_measurements(graph: nx.DiGraph, model: Model) -> nx.DiGraph:
+def _without_measurements(graph: nx.DiGraph[str], model: Model) -> nx.DiGraph[str]:
     """The graph without what enters controllers as measurements: what is left of a cascade is its set points."""
     kept = graph.copy()
     kept.remove_nodes_from([one.pv for one in model.controllers if one.pv in kept])
     return kept
 
 
-def slow_gain(
-    model: Model, values: dict[str, float], source: str, target: str, opened: Collection[str] = ()
-) -> float:
+def slow_gain(model: Model, values: dict[str, float], source: str, target: str, opened: Collection[str] = ()) -> float:
     """d target / d source [SI] at a very low frequency, with the `opened` names held.
 
     Where the held system is unstable by itself the frequency lies above its growth, so that the sign is the one that
@@ -112,7 +112,7 @@ def _frequency(system: System, matrix: FloatArray) -> float:
 
 
 def _feedforward_problem(
-    model: Model, values: dict[str, float], graph: nx.DiGraph, controller: Controller
+    model: Model, values: dict[str, float], graph: nx.DiGraph[str], controller: Controller
 ) -> Problem | None:
     """A feedforward path must act against what the disturbance does by itself."""
     if not controller.ff:

@@ -34,9 +34,7 @@ def equations(part: Translator, balances: dict[str, tuple[Balance, str]], states
     return found
 
 
-def _equation(
-    draft: Draft, left: Expression, right: Expression, states: set[str], name: str, where: Where
-) -> Equation:
+def _equation(draft: Draft, left: Expression, right: Expression, states: set[str], name: str, where: Where) -> Equation:
     difference = Operation("-", (left, right))
     with_rates = transform(difference, lambda node: _chain(draft, node, states))
     involved = sorted(one for one in names_in(with_rates) if one.startswith(RATE))
@@ -44,7 +42,9 @@ def _equation(
     still = substitute(right if _only_left(left, right) else difference, {one: Number(0.0) for one in involved})
     if not _only_left(left, right):
         still = Operation("neg", (still,))
-    return Equation({state: factor for state, factor in factors.items() if factor != Number(0.0)}, simplify(still), name, where)
+    return Equation(
+        {state: factor for state, factor in factors.items() if factor != Number(0.0)}, simplify(still), name, where
+    )
 
 
 def _only_left(left: Expression, right: Expression) -> bool:

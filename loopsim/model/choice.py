@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
-from functools import lru_cache
+from functools import lru_cache, partial
 from pathlib import Path
+from typing import Any
 
 from loopsim.documents.library import Library
 from loopsim.documents.load import read_diagram, read_scenario
@@ -28,34 +29,42 @@ class Source:
     diagrams: tuple[Diagram, ...]
     library: Library
     values: Mapping[str, Given] = field(default_factory=dict)
+    _kept: dict[tuple[object, ...], Any] = field(default_factory=dict)
 
-    def __hash__(self) -> int:
-        return id(self)
-
-    @lru_cache(maxsize=256)
     def law(self, point: str = "") -> Model:
         """The continuous law of all of it, at an operating point of the plant ('' for its own values)."""
-        return assemble(self.diagrams, self.library, law=True, values=self.values, point=point)
+        make = partial(assemble, self.diagrams, self.library, law=True, values=self.values, point=point)
+        law: Model = self._once(("law", point), make)
+        return law
 
-    @lru_cache(maxsize=256)
     def rested(self, point: str = "") -> OperatingPoint:
         """Where plant and controllers rest together, signs audited. Raises `ComputationError`, `InputError`."""
-        law = self.law(point)
-        found = rest(law)
-        problems = audit(law, found.values)
-        if problems:
-            raise InputError(problems)
+        found: OperatingPoint = self._once(("rest", point), partial(_audited, self.law(point)))
         return found
 
-    @lru_cache(maxsize=256)
     def timed(self, free: frozenset[str] = frozenset(), point: str = "") -> Model:
         """What is simulated; `free` names what events may change."""
-        return assemble(self.diagrams, self.library, free=free, values=self.values, point=point)
+        make = partial(assemble, self.diagrams, self.library, free=free, values=self.values, point=point)
+        timed: Model = self._once(("timed", free, point), make)
+        return timed
+
+    def _once(self, key: tuple[object, ...], make: Callable[[], Any]) -> Any:
+        if key not in self._kept:
+            self._kept[key] = make()
+        return self._kept[key]
 
     @property
     def points(self) -> tuple[str, ...]:
         """The names of the plant's operating points."""
         return tuple(name for diagram in self.diagrams for name in diagram.points)
+
+
+def _audited(law: Model) -> OperatingPoint:
+    found = rest(law)
+    problems = audit(law, found.values)
+    if problems:
+        raise InputError(problems)
+    return found
 
 
 def source_of(plant: Path, strategies: Sequence[Path], name: str = "", asked_at: Where | None = None) -> Source:
@@ -72,7 +81,11 @@ def _stamps(plant: Path, strategies: Sequence[Path]) -> tuple[tuple[str, int, in
 
 @lru_cache(maxsize=64)
 def _source(
-    plant: Path, strategies: tuple[Path, ...], name: str, asked_at: Where | None, stamps: tuple[tuple[str, int, int], ...]
+    plant: Path,
+    strategies: tuple[Path, ...],
+    name: str,
+    asked_at: Where | None,
+    stamps: tuple[tuple[str, int, int], ...],
 ) -> Source:
     problems = Problems()
     diagrams: list[Diagram] = []

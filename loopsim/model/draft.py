@@ -153,7 +153,7 @@ class Member:
 
 
 def namespace(instance: Instance, elements: Elements) -> dict[str, Member]:
-    """All element names of an instance; single elements' own entries win over `[i]`; outputs do not hide what they show."""
+    """All element names of an instance; single elements win over `[i]`, outputs do not hide what they show."""
     block, found = instance.block, dict[str, Member]()
     groups: list[tuple[str, tuple[object, ...]]] = [
         ("output", block.outputs),

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from loopsim.documents.types import Balance, Bounds, Formula, Given, Held, Output, PairValue, Quantity, TableValue
+from loopsim.documents.types import Balance, Bounds, Formula, Given, Held, Output, Quantity, Word
 from loopsim.language.derivative import simplify
 from loopsim.language.tree import Expression, Name, Number, Operation, names_in
 from loopsim.model.balances import equations, solve_rates
@@ -37,7 +37,7 @@ class Elaboration(Givens):
         unit = self.draft.unit(flat, given.where)
         if isinstance(given.value, Formula):
             return given.value.tree
-        if isinstance(given.value, PairValue | TableValue) or not hasattr(given.value, "text"):
+        if not isinstance(given.value, Quantity | Word):
             self.draft.problems.add(f"the start of '{flat}' is not a single value", given.where)
             return Number(0.0)
         return Number(si_value(given.value, unit, self.draft.problems, self.draft.layout.air_pressure, f"'{flat}'"))
@@ -50,11 +50,10 @@ class Elaboration(Givens):
     # ------------------------------------------------------------ states
     def note_states(self) -> None:
         """States and the rates that the balances give them."""
-        own: dict[str, tuple[Balance, str]] = {
-            element: entry
-            for element, entry in self._entries(self.block.balances).items()
-            if isinstance(entry[0], Balance)  # narrows the type
-        }  # type: ignore[misc]
+        own: dict[str, tuple[Balance, str]] = {}
+        for element, (balance, index) in self._entries(self.block.balances).items():
+            assert isinstance(balance, Balance)
+            own[element] = (balance, index)
         states = {self.flat(e): e for held in self.block.states for e in self.elements.of(held.key)}
         for element, (law, index) in self.laws.items():
             if isinstance(law, Balance):
@@ -134,10 +133,8 @@ class Elaboration(Givens):
             for element in self.elements.of(entry.key):
                 self._output(entry, element)
         for element, member in self.members.items():
-            if member.kind in ("memory", "state") and self.flat(element) not in self.draft.absent:
-                entry = member.entry
-                assert isinstance(entry, Held)
-                self._watch(entry.bounds, self.flat(element), entry)
+            if isinstance(member.entry, Held) and self.flat(element) not in self.draft.absent:
+                self._watch(member.entry.bounds, self.flat(element), member.entry)
         self._note_in_use()
 
     def _output(self, entry: Output, element: str) -> None:
@@ -227,5 +224,3 @@ class Elaboration(Givens):
                 self.where,
             )
         )
-
-

@@ -12,7 +12,7 @@ from loopsim.model.layout import Instance
 
 @dataclass(frozen=True, slots=True)
 class Elements:
-    """What an instance repeats over: `letter`, the `indices` as texts, and the count parameter's name ('' for a list)."""
+    """What an instance repeats over: `letter`, the `indices` as texts, the count parameter's name ('' for a list)."""
 
     letter: str = ""
     indices: tuple[str, ...] = ()

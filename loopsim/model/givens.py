@@ -10,6 +10,7 @@ from loopsim.documents.types import (
     Definition,
     Formula,
     Given,
+    Held,
     Input,
     PairValue,
     Parameter,
@@ -155,7 +156,10 @@ class Givens(Translator):
         for unit, points in zip(parameter.table, (value.x, value.y), strict=True):
             units = [one.unit or unit for one in points]
             columns.append(
-                tuple(to_si(one.value, own, self.draft.layout.air_pressure) for one, own in zip(points, units, strict=True))
+                tuple(
+                    to_si(one.value, own, self.draft.layout.air_pressure)
+                    for one, own in zip(points, units, strict=True)
+                )
             )
         if list(columns[0]) != sorted(set(columns[0])):
             self.draft.problems.add(f"the x values of '{flat}' do not rise", value.where, "sort the points by x")
@@ -283,5 +287,5 @@ class Givens(Translator):
 
 def known_keys(block: Block) -> set[str]:
     """What a plant may give to a block: settings, parameters, inputs, and starts of states and memories."""
-    entries = (*block.parameters, *block.inputs, *block.states, *block.memory)
+    entries: tuple[Parameter | Input | Held, ...] = (*block.parameters, *block.inputs, *block.states, *block.memory)
     return {entry.key.name for entry in entries} | set(block.settings)

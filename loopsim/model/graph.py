@@ -9,12 +9,12 @@ from loopsim.model.order import statement_names
 from loopsim.model.types import Model
 
 
-def influences(model: Model) -> nx.DiGraph:
+def influences(model: Model) -> nx.DiGraph[str]:
     """Edges from each name to every name that depends on it, through states, scans and dead times.
 
     Nodes carry `block`, the tag they belong to ('' for boundary values). Answers along wires are left out.
     """
-    graph = nx.DiGraph()
+    graph: nx.DiGraph[str] = nx.DiGraph()
     for name, reads, tag in _readers(model):
         graph.add_node(name, block=tag)
         graph.add_edges_from((before, name) for before in reads if not _is_answer(before))
@@ -47,18 +47,16 @@ def _readers(model: Model) -> list[tuple[str, set[str], str]]:
     return found
 
 
-def reached_from(graph: nx.DiGraph, name: str) -> frozenset[str]:
+def reached_from(graph: nx.DiGraph[str], name: str) -> frozenset[str]:
     """The name itself and everything that depends on it."""
     if name not in graph:
         return frozenset({name})
     return frozenset({name} | nx.descendants(graph, name))
 
 
-def dead_time_in_loop(model: Model, graph: nx.DiGraph) -> bool:
+def dead_time_in_loop(model: Model, graph: nx.DiGraph[str]) -> bool:
     """Whether a dead time lies in a loop, so that stability is a question for characteristic roots."""
     for part in nx.strongly_connected_components(graph):
         if len(part) > 1 and any(name in model.dead_times for name in part):
             return True
     return False
-
-

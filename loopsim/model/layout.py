@@ -6,7 +6,7 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field, replace
 
 from loopsim.documents.library import Library
-from loopsim.documents.types import Block, Diagram, Formula, Given, Liquid, NameList, PairValue, Use, Value, Wire, Word
+from loopsim.documents.types import Block, Diagram, Formula, Given, Liquid, PairValue, Quantity, Use, Value, Wire, Word
 from loopsim.errors import Problems, Where, nearest
 from loopsim.language.derivative import substitute
 from loopsim.language.tree import Expression, Name
@@ -25,7 +25,7 @@ class Instance:
 
 @dataclass(slots=True)
 class Layout:
-    """All instances and wires of a plant and its strategies; `ports` leads from a block of blocks to the port inside."""
+    """Instances and wires of a plant and its strategies; `ports` leads from a block of blocks to the port inside."""
 
     name: str
     boundary: dict[str, Given] = field(default_factory=dict)
@@ -136,7 +136,7 @@ def _flat_value(value: Value, tag: str, own: set[str]) -> Value:
         return replace(value, tree=substitute(value.tree, flat))
     if isinstance(value, PairValue):
         low, high = (_flat_value(one, tag, own) for one in (value.low, value.high))
-        assert not isinstance(low, Word | PairValue | NameList) and not isinstance(high, Word | PairValue | NameList)
+        assert isinstance(low, Quantity | Formula) and isinstance(high, Quantity | Formula)
         return replace(value, low=low, high=high)
     return value
 
@@ -190,5 +190,3 @@ def _inside(layout: Layout, end: str) -> str:
     while end in layout.ports:
         end = layout.ports[end]
     return end
-
-

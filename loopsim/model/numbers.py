@@ -20,7 +20,9 @@ Slopes = dict[int, float]
 
 def relaxed(tree: Expression) -> Expression:
     """A tree whose `clip` lets everything pass: what would be needed if nothing had a limit."""
-    return transform(tree, lambda node: node.arguments[0] if isinstance(node, Call) and node.function == "clip" else node)
+    return transform(
+        tree, lambda node: node.arguments[0] if isinstance(node, Call) and node.function == "clip" else node
+    )
 
 
 @dataclass(frozen=True, slots=True)

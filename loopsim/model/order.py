@@ -50,7 +50,7 @@ def ordered(model: Model, wanted: Iterable[str]) -> list[Step]:
 
     The order depends on names only, so it is the same however the files are arranged.
     """
-    graph = nx.DiGraph()
+    graph: nx.DiGraph[str] = nx.DiGraph()
     pending = sorted(set(wanted))
     while pending:
         name = pending.pop()
@@ -71,18 +71,18 @@ def ordered(model: Model, wanted: Iterable[str]) -> list[Step]:
     return steps
 
 
-def _step(model: Model, graph: nx.DiGraph, members: set[str]) -> Step | None:
+def _step(model: Model, graph: nx.DiGraph[str], members: set[str]) -> Step | None:
     (name, *others) = sorted(members)
     looped = bool(others) or graph.has_edge(name, name) or name in model.implicits
     if looped:
         return _loop(model, graph.subgraph(members))
     for kind in (model.assignments, model.dead_times, model.noises, model.latches):
         if name in kind:
-            return kind[name]  # type: ignore[index, no-any-return]
+            return kind[name]
     return None
 
 
-def _loop(model: Model, graph: nx.DiGraph) -> Loop:
+def _loop(model: Model, graph: nx.DiGraph[str]) -> Loop:
     """Cut a loop at its implicit unknowns, then at the names that lie on most of what is left."""
     unknowns = sorted(name for name in graph if name in model.implicits)
     rest = graph.subgraph([name for name in graph if name not in unknowns]).copy()
@@ -109,7 +109,7 @@ def _loop(model: Model, graph: nx.DiGraph) -> Loop:
     )
 
 
-def _rings(graph: nx.DiGraph, part: set[str]) -> bool:
+def _rings(graph: nx.DiGraph[str], part: set[str]) -> bool:
     return len(part) > 1 or any(graph.has_edge(one, one) for one in part)
 
 
@@ -145,7 +145,7 @@ def order_scans(
     A state does not jump with an execution, so reading one makes nobody a user.
     """
     writers = {stored: task.tag for task in tasks for stored, _ in task.writes if stored not in states}
-    graph = nx.DiGraph()
+    graph: nx.DiGraph[str] = nx.DiGraph()
     graph.add_nodes_from(sorted(task.tag for task in tasks))
     for task in tasks:
         for name in _read_by(task, assignments):
@@ -189,7 +189,7 @@ def statement_names(statement: Assignment | ScanLatch) -> set[str]:
 def sorted_statements(task: ScanTask) -> list[Assignment | ScanLatch]:
     """The statements of one execution in an order that can be computed; a circle is refused by name."""
     by_name = {one.name: one for one in task.statements}
-    graph = nx.DiGraph()
+    graph: nx.DiGraph[str] = nx.DiGraph()
     graph.add_nodes_from(sorted(by_name))
     for name, statement in by_name.items():
         graph.add_edges_from((before, name) for before in statement_names(statement) if before in by_name)
@@ -202,5 +202,3 @@ def sorted_statements(task: ScanTask) -> list[Assignment | ScanLatch]:
             by_name[nx.find_cycle(graph)[0][0]].where,
             "use was(…) where the previous value is meant",
         ) from None
-
-

@@ -6,8 +6,8 @@ from typing import TYPE_CHECKING
 
 from loopsim.language.derivative import simplify
 from loopsim.language.tree import Call, Expression, Name, Number, Operation
-from loopsim.model.types import PRIME, DeadTime, Latch, Noise, ScanLatch, State
 from loopsim.model.draft import INNER
+from loopsim.model.types import PRIME, DeadTime, Latch, Noise, ScanLatch, State
 
 if TYPE_CHECKING:
     from loopsim.model.translate import Translator
@@ -92,7 +92,7 @@ def _dead_time(part: Translator, argument: Expression, lag: Expression, swept: s
 
 
 def _noise(part: Translator, node: Call, index: str, scan: bool) -> Expression:
-    deviation, every = (part.tree(argument, index, scan) for argument in node.arguments)
+    deviation = part.tree(node.arguments[0], index, scan)
     if part.draft.law or (part.draft.constant(deviation) and part.draft.static(deviation) == 0):
         return Number(0.0)
     key = ("noise", part.tag, part.noise_number(node), index)
@@ -154,9 +154,7 @@ def _latched(part: Translator, node: Call, index: str, scan: bool) -> Expression
     return Name(part.draft.named[key])
 
 
-def _new_latch(
-    part: Translator, kind: str, condition: Expression, argument: Expression | None, scan: bool
-) -> str:
+def _new_latch(part: Translator, kind: str, condition: Expression, argument: Expression | None, scan: bool) -> str:
     stem = part.draft.fresh(part.tag, kind)
     slots = (f"{stem}.from", f"{stem}.on")
     for slot in slots:

@@ -129,7 +129,7 @@ def _implicit_step(system: System, u: FloatArray, inertia: FloatArray) -> FloatA
 
 def _solved(matrix: FloatArray, right: FloatArray) -> FloatArray:
     try:
-        return np.linalg.solve(matrix, right)
+        return np.asarray(np.linalg.solve(matrix, right), dtype=np.float64)
     except np.linalg.LinAlgError:
         return np.asarray(np.linalg.lstsq(matrix, right, rcond=None)[0])
 
@@ -182,7 +182,9 @@ def _span(model: Model, controller: Controller) -> float:
 
 def _explained(model: Model, controller: Controller, measured: float, wish: _Wish | None) -> Unreached:
     needed = wish.values[controller.out] if wish is not None else float("nan")
-    driven = [one.tag for one in model.assignments.values() if one.tree == Name(controller.out) and one.tag != controller.tag]
+    driven = [
+        one.tag for one in model.assignments.values() if one.tree == Name(controller.out) and one.tag != controller.tag
+    ]
     actuator = sorted(driven)[0] if driven else controller.tag
     unit = model.signals[controller.pv].unit if controller.pv in model.signals else None
     reached = f"{from_si(measured, unit, model.air_pressure):.4g} {unit.text}" if unit else f"{measured:.6g}"

@@ -13,7 +13,7 @@ from loopsim.language.evaluate import evaluate
 from loopsim.language.functions import CONSTANTS
 from loopsim.language.tree import COMPARISONS, LOGIC, Call, Expression, Name, Number, Operation, Rate, parts, walk
 from loopsim.language.units import to_si
-from loopsim.model.draft import Absent, Draft
+from loopsim.model.draft import Absent
 from loopsim.model.instance import Part
 from loopsim.model.primitives import primitive
 from loopsim.model.scales import FALSE_WORDS, TRUE_WORDS

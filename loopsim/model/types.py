@@ -68,7 +68,7 @@ class Assignment:
 
 @dataclass(frozen=True, slots=True)
 class Implicit:
-    """An unknown with `residual` = 0; looked for between `low` and `high`; `stops`: at an end where nothing solves it."""
+    """An unknown with `residual` = 0, between `low` and `high`; `stops`: at an end where nothing solves it."""
 
     name: str
     tag: str
@@ -138,7 +138,7 @@ class ScanLatch:
 class ScanTask:
     """One block's execution.
 
-    `statements`: primed names in an order that can be computed; `writes`: (stored name, primed name or tree) at the end.
+    `statements` give primed names; `writes`: (stored name, primed name or tree) at the end.
     `continuous`: a `scan: 0 s` block, executed once at the start and at every event.
     """
 

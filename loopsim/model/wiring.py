@@ -46,7 +46,8 @@ class Wiring:
 
 def ports_of(instance: Instance, elements: Elements) -> Iterator[Port]:
     """The ports of one instance, repeats opened, single elements' own entries winning."""
-    for entries in (instance.block.inputs, instance.block.outputs):
+    groups: tuple[tuple[Input | Output, ...], ...] = (instance.block.inputs, instance.block.outputs)
+    for entries in groups:
         found: dict[str, Port] = {}
         for entry in sorted(entries, key=lambda one: not elements.generic(one.key)):
             for element in elements.of(entry.key):
@@ -202,5 +203,3 @@ class _Joiner:
             )
             return
         self.wiring.drivers[target.flat] = Driver(source, where, stream)
-
-

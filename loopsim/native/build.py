@@ -87,7 +87,14 @@ def _target_machine() -> Any:
 
 
 def _key(text: str, entries: Mapping[str, tuple[str, ...]], machine: Any) -> str:
-    parts = (VERSION, llvmlite.__version__, llvm.get_host_cpu_name(), machine.triple, repr(sorted(entries.items())), text)
+    parts = (
+        VERSION,
+        llvmlite.__version__,
+        llvm.get_host_cpu_name(),
+        machine.triple,
+        repr(sorted(entries.items())),
+        text,
+    )
     return hashlib.sha256("\0".join(parts).encode()).hexdigest()
 
 

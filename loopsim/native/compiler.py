@@ -1,9 +1,10 @@
 """Restricted Python compiled: functions of numbers and flat arrays, lowered to LLVM's language.
 
 What it takes: module-level functions and integer constants; assignments (also `+=`, also to `a[i]`), `if`, `while`,
-`for i in range(…)`, `continue`, `return`; arithmetic, comparisons, `and or not`, `a if c else b`; calls of the module's functions and
-of `BUILTINS`. Types: f (float), i (int), F and I (flat arrays of them), P (array of float arrays). A function is compiled
-for the argument types of its first call. Every operation gives the same bits as in Python.
+`for i in range(…)`, `continue`, `return`; arithmetic, comparisons, `and or not`, `a if c else b`; calls of the module's
+functions, of `LIBRARY` and `INTRINSIC`, of `div`, `abs` and `int`. Types: f (float), i (int), F and I (flat arrays of
+them), P (array of float arrays). A function is compiled for the argument types of its first call. Every operation gives
+the same bits as in Python.
 """
 
 from __future__ import annotations
@@ -23,7 +24,7 @@ TYPES: dict[str, ir.Type] = {
     "P": DOUBLE.as_pointer().as_pointer(),
 }
 ELEMENT = {"F": "f", "I": "i", "P": "F"}
-# functions of one or two floats from the C library, bound under names of our own so that the optimiser leaves their bits
+# functions of one or two floats from the C library, bound under names of our own: the optimiser must leave their bits
 LIBRARY = {
     "power": 2,
     "exponential": 1,
@@ -102,10 +103,14 @@ class Module:
     def _whole_names(self, node: ast.FunctionDef) -> set[str]:
         """Locals that hold whole numbers by their first assignment."""
         found: dict[str, bool] = {}
-        assigned = [one for one in ast.walk(node) if isinstance(one, ast.Assign) and isinstance(one.targets[0], ast.Name)]
+        assigned = [
+            one for one in ast.walk(node) if isinstance(one, ast.Assign) and isinstance(one.targets[0], ast.Name)
+        ]
         for one in sorted(assigned, key=lambda one: one.lineno):
             assert isinstance(one.targets[0], ast.Name)
-            found.setdefault(one.targets[0].id, self._is_whole(one.value, {name for name, is_so in found.items() if is_so}))
+            found.setdefault(
+                one.targets[0].id, self._is_whole(one.value, {name for name, is_so in found.items() if is_so})
+            )
         return {name for name, is_so in found.items() if is_so}
 
     def _is_whole(self, node: ast.expr, names: set[str]) -> bool:
@@ -276,7 +281,11 @@ class _Lowering:
         return self.constant(self.module.constants[name])
 
     def constant(self, number: float | int) -> Value:
-        return Value("i", ir.Constant(LONG, number)) if isinstance(number, int) else Value("f", ir.Constant(DOUBLE, number))
+        return (
+            Value("i", ir.Constant(LONG, number))
+            if isinstance(number, int)
+            else Value("f", ir.Constant(DOUBLE, number))
+        )
 
     def of_Name(self, node: ast.Name) -> Value:
         return self.name(node.id)
@@ -376,7 +385,9 @@ class _Lowering:
             kinds = tuple("i" if one.kind == "b" else one.kind for one in arguments)
             known = self.module.compiled.get(name)
             wanted = known[2] if known is not None else kinds
-            wanted = tuple("f" if have == "i" and want == "f" else have for have, want in zip(kinds, wanted, strict=True))
+            wanted = tuple(
+                "f" if have == "i" and want == "f" else have for have, want in zip(kinds, wanted, strict=True)
+            )
             made, returns = self.module.function(name, wanted)
             values = [self.cast(one, kind) for one, kind in zip(arguments, wanted, strict=True)]
             return Value(returns, self.builder.call(made, values))
@@ -396,7 +407,9 @@ class _Lowering:
 
     def absolute(self, value: Value) -> Value:
         if value.kind == "f":
-            return Value("f", self.builder.call(self.module.module.declare_intrinsic("llvm.fabs", [DOUBLE]), [value.value]))
+            return Value(
+                "f", self.builder.call(self.module.module.declare_intrinsic("llvm.fabs", [DOUBLE]), [value.value])
+            )
         negative = self.builder.icmp_signed("<", value.value, ir.Constant(LONG, 0))
         return Value("i", self.builder.select(negative, self.builder.neg(value.value), value.value))
 

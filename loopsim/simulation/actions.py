@@ -60,7 +60,9 @@ def target_of(event: Event) -> str:
 def free_names(events: tuple[Event, ...], law: Model) -> frozenset[str]:
     """Names that events may change, boundary values left out: those are never taken for constant."""
     names = {target_of(event) for event in events}
-    return frozenset(name for name in names if name not in law.slots or law.slots[name].kind not in ("boundary", "input"))
+    return frozenset(
+        name for name in names if name not in law.slots or law.slots[name].kind not in ("boundary", "input")
+    )
 
 
 def check_target(event: Event, model: Model, problems: Problems) -> bool:
@@ -120,7 +122,7 @@ class Actions:
     def _unit(self, name: str) -> Unit:
         for items in (self.model.slots, self.model.memory, self.model.states):
             if name in items:
-                return items[name].unit  # type: ignore[index, no-any-return]
+                return items[name].unit
         return PERCENT
 
     def change_by(self, by: Quantity, name: str, base: float) -> float:
@@ -231,9 +233,15 @@ class Actions:
         found = []
         for key, given in event.sets.items():
             name = f"{event.target}.{key}"
-            if name not in self.model.memory and name not in self.model.states and f"{name}.left" not in self.model.memory:
+            if (
+                name not in self.model.memory
+                and name not in self.model.states
+                and f"{name}.left" not in self.model.memory
+            ):
                 known = [one.rpartition(".")[2] for one in self.model.memory if one.startswith(event.target + ".")]
-                raise fail(f"'{event.target}' has no stored value '{key}'", given.where, nearest(key, known, "it stores"))
+                raise fail(
+                    f"'{event.target}' has no stored value '{key}'", given.where, nearest(key, known, "it stores")
+                )
             stored = f"{name}.left" if f"{name}.left" in self.model.memory else name
             found.append((stored, self._given(given, name)))
         return tuple(found)

@@ -23,7 +23,7 @@ class Condition:
 
 @dataclass(frozen=True, slots=True)
 class Wishes:
-    """What a run wants of the model: names to judge, names to record, conditions, and slots that events move in time."""
+    """What a run wants of the model: names to judge and to record, conditions, slots that events move in time."""
 
     judged: tuple[str, ...] = ()
     recorded: tuple[str, ...] = ()
@@ -92,7 +92,7 @@ class Analysis:
         model = self.model
         for items in (model.states, model.slots, model.memory, model.signals):
             if name in items:
-                return items[name].unit.factor  # type: ignore[index, no-any-return]
+                return items[name].unit.factor
         if name not in self._scales:
             self._scales[name] = 0.0
             below = [self._scale(one) for one in self._below(name) or ()]

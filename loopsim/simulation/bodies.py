@@ -8,9 +8,9 @@ from dataclasses import dataclass, replace
 from loopsim.errors import Where
 from loopsim.language.tree import Expression, Name, names_in, parts
 from loopsim.model.order import Loop, Step, sorted_statements
-from loopsim.model.types import Assignment, DeadTime, Latch, Model, Noise, ScanLatch, ScanTask
+from loopsim.model.types import Assignment, DeadTime, Latch, Model, Noise, ScanLatch, ScanTask, State
 from loopsim.simulation.analysis import Analysis, Condition, Wishes
-from loopsim.simulation.loops import loop_functions, loop_lines
+from loopsim.simulation.loops import loop_lines
 from loopsim.simulation.switches import Switch
 from loopsim.simulation.text import Identifiers, Writer
 
@@ -67,7 +67,7 @@ class Bodies:
 
     # ------------------------------------------------------------ places
     def _readied(self, trees: dict[str, Expression]) -> dict[str, Expression]:
-        items = {**self.model.states, **self.model.dead_times}
+        items: dict[str, State | DeadTime] = {**self.model.states, **self.model.dead_times}
         return {name: self.analysis.readied(tree, items[name].tag, items[name].where) for name, tree in trees.items()}
 
     def _watched_names(self) -> dict[str, int]:
@@ -96,7 +96,9 @@ class Bodies:
         }
         self.size_of_p = len(self.parameters) + len(MOTION) * len(self.motion)
         switches = self.analysis.switches
-        switches.found += [switches.made(one.left, one.right, 0.0, one.tag, one.where) for one in self.wishes.conditions]
+        switches.found += [
+            switches.made(one.left, one.right, 0.0, one.tag, one.where) for one in self.wishes.conditions
+        ]
 
     def _swept_flows(self) -> list[Expression]:
         """The flows behind the swept volumes, which count only while they are above zero."""

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from itertools import pairwise
 
 from loopsim.language.evaluate import Table
 from loopsim.language.tree import Expression, names_in
@@ -83,7 +84,7 @@ def _table(number: str, table: Table) -> Iterator[str]:
         slope_only = function == "interp_slope"
         first, last = points[0], points[-1]
         lines += [f"    if a <= {first[0]!r}:", f"        return {0.0 if slope_only else first[1]!r}"]
-        for (x0, y0), (x1, y1) in zip(points, points[1:], strict=False):
+        for (x0, y0), (x1, y1) in pairwise(points):
             slope = (y1 - y0) / (x1 - x0)
             text = f"{slope!r}" if slope_only else f"{y0!r} + {number_text(slope)}*(a - {number_text(x0)})"
             lines += [f"    if a < {x1!r}:", f"        return {text}"]
@@ -150,7 +151,9 @@ def _switches(bodies: Bodies) -> str:
     analysis, writer, done = bodies.analysis, bodies.writer(), set[int]()
     trees = [*bodies.rates.values(), *bodies.arguments.values(), *bodies.lags.values()]
     trees += [tree for pair in bodies.latches.values() for tree in pair if tree is not None]
-    wanted = {name for switch in analysis.switches.found for side in (switch.left, switch.right) for name in names_in(side)}
+    wanted = {
+        name for switch in analysis.switches.found for side in (switch.left, switch.right) for name in names_in(side)
+    }
     wanted |= {name for tree in trees for name in names_in(tree)} | analysis.switch_names(trees)
     lines = bodies.motion_lines()
     for step in analysis.needed(wanted, sticky=True):
@@ -186,7 +189,11 @@ def _one_switch(bodies: Bodies, number: int, writer: Writer, done: set[int]) -> 
     lines = [line for side in (switch.left, switch.right) for line in _compared(bodies, side, writer, done)]
     left, right = writer.value(switch.left), writer.value(switch.right)
     lines += [*writer.take(), f"first = {left}", f"second = {right}", "gap = first - second"]
-    lines += [f"if abs(gap) <= {DEAD_ZONE}*(abs(first) + abs(second)) + {switch.zone!r}:", "    gap = 0.0", f"g[{number}] = gap"]
+    lines += [
+        f"if abs(gap) <= {DEAD_ZONE}*(abs(first) + abs(second)) + {switch.zone!r}:",
+        "    gap = 0.0",
+        f"g[{number}] = gap",
+    ]
     lines += ["if live == 1 and gap > 0.0:", f"    b[{number}] = 1.0"]
     return [*lines, "if live == 1 and gap < 0.0:", f"    b[{number}] = 0.0"]
 
@@ -215,9 +222,7 @@ def _latches(bodies: Bodies) -> str:
             lines += _update(bodies, step, writer)
         lines += bodies.step_lines(step, writer)
         if isinstance(step, Loop):
-            lines += [
-                f"m[{bodies.memory['last of ' + unknown]}] = {bodies.read(unknown)}" for unknown in step.unknowns
-            ]
+            lines += [f"m[{bodies.memory['last of ' + unknown]}] = {bodies.read(unknown)}" for unknown in step.unknowns]
     for tree in bodies.flows:
         text = writer.value(tree)
         lines += [*writer.take(), f"if {text} < 0.0:", "    n[4] = 1"]

@@ -131,7 +131,7 @@ def _as_where(node: Expression) -> Expression:
     return node
 
 
-SCALAR = '''\
+SCALAR = """\
 def solve_{number}(start, low, high, {arrays}):
     best = start if start > low else low
     best = best if best < high else high
@@ -206,7 +206,7 @@ def bisect_{number}(low, high, at_low, {arrays}):
             return middle
     return middle
 
-'''
+"""
 
 
 def _vector(bodies: Bodies, loop: Loop, number: int) -> str:
@@ -227,11 +227,15 @@ def _vector(bodies: Bodies, loop: Loop, number: int) -> str:
     step.append("moved = 0.0")
     for row, name in enumerate(names):
         step += [f"{name} = {name} - s{row}", f"moved = greater(moved, div(abs(s{row}), abs({name}) + 1e-6))"]
-    lines = [f"{name} = m[{bodies.memory['last of ' + unknown]}]" for name, unknown in zip(names, loop.unknowns, strict=True)]
+    lines = [
+        f"{name} = m[{bodies.memory['last of ' + unknown]}]" for name, unknown in zip(names, loop.unknowns, strict=True)
+    ]
     lines += ["count = 0", "moved = 1.0", f"while count < {ITERATIONS} and not (moved <= {RELATIVE}):"]
     lines += ["    count += 1", *(f"    {line}" for line in step)]
     lines += ["if not (moved <= 1e-9):", f"    n[1] = {number + 1}"]
-    lines += [f"m[{bodies.memory['now of ' + unknown]}] = {name}" for name, unknown in zip(names, loop.unknowns, strict=True)]
+    lines += [
+        f"m[{bodies.memory['now of ' + unknown]}] = {name}" for name, unknown in zip(names, loop.unknowns, strict=True)
+    ]
     return bodies.function(f"solve_{number}({arguments})", [*lines, "return 0.0"])
 
 

@@ -68,7 +68,7 @@ class Outcome:
 
 @dataclass(slots=True)
 class RunState:
-    """Everything that evolves in a run: x, m, p, b as in the generated text, history, counters, and what was recorded."""
+    """Everything that evolves in a run: x, m, p, b as in the generated text, history, counters, what was recorded."""
 
     e: list[float]
     j: list[int]
@@ -253,7 +253,8 @@ def start(
     timing = [_array(machine, [0.0] * count) for count in (sizes.NC, sizes.NC, sizes.NZ)]
     counters = [_array(machine, [0] * max(count, 1)) for count in (sizes.NC, sizes.NZ)]
     echoes = _array(machine, [0.0] * (ECHOES * sizes.ND)), _array(machine, [0] * max(sizes.ND, 1))
-    state = RunState(*[_array(machine, values) for values in arrays], timing, counters, *echoes)
+    made = [_array(machine, values) for values in arrays]
+    state = RunState(*made, timing, counters, *echoes)  # type: ignore[call-arg]
     work = _work(machine)
     _first_piece(machine, state, work)
     return state
@@ -296,9 +297,7 @@ def _arguments(state: RunState, f: list[list[float]], g: list[float], c: list[fl
     )
 
 
-def advance(
-    machine: Machine, state: RunState, until: float, enough: Callable[[], bool] = lambda: False
-) -> Outcome:
+def advance(machine: Machine, state: RunState, until: float, enough: Callable[[], bool] = lambda: False) -> Outcome:
     """Move on to `until` [s] or to the first condition; `enough` is asked now and then whether to give up."""
     f, g, c = _work(machine)
     arguments = list(_arguments(state, f, g, c))
@@ -384,7 +383,7 @@ def put_aside(machine: Machine, state: RunState) -> None:
     state.n[6] = max(CAPACITY, 2 * state.n[0])
     room = state.n[6] * stride
     whole = np.concatenate([kept, np.zeros(room - len(kept))])
-    state.h = whole if machine.native is not None else whole.tolist()
+    state.h = whole if machine.native is not None else whole.tolist()  # type: ignore[assignment]
     for k in range(machine.ND):
         state.n[8 + k] = max(0, state.n[8 + k] - first + 1)
 

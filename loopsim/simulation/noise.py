@@ -34,6 +34,5 @@ def draws(
     machine.timing(p, *periods, every)
     counts = [math.floor(lasts / one + 1e-6) + 2 if one > 0 else 1 for one in every]
     return [
-        normals(seed, run, model.noises[name].key, count)
-        for name, count in zip(program.noises, counts, strict=True)
+        normals(seed, run, model.noises[name].key, count) for name, count in zip(program.noises, counts, strict=True)
     ]

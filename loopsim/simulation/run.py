@@ -27,7 +27,6 @@ from loopsim.simulation.machine import trends as trends_of
 from loopsim.simulation.noise import draws
 from loopsim.simulation.starts import start_values
 
-
 MARK = "mark"  # among the pending: an event happens, to be noted
 ARMED = "armed"  # among the pending: a condition has held long enough once this time comes
 CROWD = 1000  # conditions may start each other this often in one instant
@@ -137,9 +136,7 @@ def prepare(
 
 
 # ---------------------------------------------------------------- conditions
-def _conditions(
-    model: Model, scenario: Scenario, skipped: set[int]
-) -> tuple[tuple[Condition, ...], dict[int, int]]:
+def _conditions(model: Model, scenario: Scenario, skipped: set[int]) -> tuple[tuple[Condition, ...], dict[int, int]]:
     """Watched levels first, then the conditions of events; `owners` maps a condition's place to its event."""
     found = [_bound_condition(bound) for bound in model.bounds]
     owners: dict[int, int] = {}
@@ -332,7 +329,12 @@ def _turned(simulation: Simulation, number: int, true: bool) -> None:
 
 def _bound_passed(simulation: Simulation, place: int, now: float) -> Status:
     bound = simulation.model.bounds[place]
-    words = {"above": "must stay above", "at_least": "must be at least", "below": "must stay below", "at_most": "must be at most"}
+    words = {
+        "above": "must stay above",
+        "at_least": "must be at least",
+        "below": "must stay below",
+        "at_most": "must be at most",
+    }
     limit = getattr(bound.limit, "value", None)
     unit = simulation.model.signals[bound.signal].unit if bound.signal in simulation.model.signals else None
     shown = "its limit" if limit is None or unit is None else f"{from_si(limit, unit):.6g} {unit.text}"

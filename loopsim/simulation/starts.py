@@ -57,9 +57,7 @@ def _floor(model: Model, name: str, values: Mapping[str, float]) -> float:
     return max(0.01 * abs(values[name]), 1e-3 * unit.factor)
 
 
-def _state(
-    model: Model, name: str, known: Mapping[str, float], values: Mapping[str, float], steady: bool
-) -> float:
+def _state(model: Model, name: str, known: Mapping[str, float], values: Mapping[str, float], steady: bool) -> float:
     state = model.states[name]
     if "#" in name:
         return 0.0

@@ -12,7 +12,6 @@ from dataclasses import dataclass, field
 from loopsim.errors import Where
 from loopsim.language.tree import Call, Expression, Number, Operation, names_in, parts, rebuild
 
-
 ZONE = 1e-12  # of the unit in which a quantity is written
 
 
@@ -71,7 +70,7 @@ class Switches:
             return node
         greater = node.operator in (">", ">=")
         tie = 1.0 if node.operator in (">=", "<") else 0.0
-        condition = Call("switch", (Number(float(self.number(*node.arguments, tie, tag, where))),))
+        condition = Call("switch", (Number(float(self.number(node.arguments[0], node.arguments[1], tie, tag, where))),))
         return condition if greater else Operation("not", (condition,))
 
     def _function(self, node: Call, tag: str, where: Where) -> Expression:
@@ -122,5 +121,3 @@ def is_flag(tree: Expression) -> bool:
     if isinstance(tree, Operation):
         return tree.operator in ("and", "or", "not", "<", "<=", ">", ">=", "==", "!=")
     return isinstance(tree, Call) and tree.function == "switch"
-
-

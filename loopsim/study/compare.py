@@ -25,7 +25,7 @@ class ControllerView:
 class Structure:
     """A strategy's graph of influences and its controllers by tag."""
 
-    graph: nx.DiGraph
+    graph: nx.DiGraph[str]
     controllers: Mapping[str, ControllerView]
 
 
@@ -118,13 +118,13 @@ def where_it_enters(structure: Structure, target: str) -> str:
     return f"is answered only once the measurement of {' and '.join(seeing)} moves"
 
 
-def _without(graph: nx.DiGraph, names: Sequence[str]) -> nx.DiGraph:
+def _without(graph: nx.DiGraph[str], names: Sequence[str]) -> nx.DiGraph[str]:
     kept = graph.copy()
     kept.remove_nodes_from([name for name in names if name in kept])
     return kept
 
 
-def _plant_only(structure: Structure) -> nx.DiGraph:
+def _plant_only(structure: Structure) -> nx.DiGraph[str]:
     """The graph without what controllers do: their outputs taken out."""
     return _without(structure.graph, [one.out for one in structure.controllers.values()])
 
@@ -141,7 +141,7 @@ def _outer_of(structure: Structure, inner: str) -> str:
     return ""
 
 
-def _sees_all(cut: nx.DiGraph, target: str, inner: ControllerView, outer: ControllerView) -> bool:
+def _sees_all(cut: nx.DiGraph[str], target: str, inner: ControllerView, outer: ControllerView) -> bool:
     """Whether a disturbance reaches the outer measurement only by way of what the inner one measures."""
     rest = _without(cut, inner.measured)
     return target not in rest or outer.pv not in nx.descendants(rest, target)

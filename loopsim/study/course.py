@@ -6,8 +6,10 @@ A course is cut into pieces; on each the signal is the quartic through five equi
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from loopsim.results import FloatArray, Pieces
 
@@ -178,7 +180,7 @@ def _turning(samples: FloatArray) -> list[tuple[float, float]]:
     return [(share, float(np.polyval(polynomial, share))) for share in (0.0, *roots, 1.0)]
 
 
-def _real_roots(polynomial: FloatArray) -> list[float]:
+def _real_roots(polynomial: NDArray[Any]) -> list[float]:
     """Real roots inside 0..1, sorted."""
     scale = np.abs(polynomial).max(initial=0.0)
     if scale == 0:
