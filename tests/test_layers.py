@@ -8,7 +8,9 @@ from pathlib import Path
 import pytest
 
 PACKAGE = Path(__file__).parents[1] / "loopsim"
-LAYERS = ["errors", "language", "documents", "results", "model", "simulation", "study", "output", "api", "cli"]
+LAYERS = [
+    *("errors", "language", "documents", "results", "model", "native", "simulation", "study", "api", "output", "cli"),
+]
 FILES = sorted(PACKAGE.rglob("*.py"))
 
 

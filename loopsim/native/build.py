@@ -15,7 +15,8 @@ from typing import Any
 import llvmlite
 import llvmlite.binding as llvm
 
-from loopsim.native.compiler import LIBRARY, Module
+from loopsim.native.compiler import Module
+from loopsim.native.kinds import LIBRARY
 
 VERSION = "2"
 C_NAMES = {
