@@ -166,7 +166,7 @@ def _unreached(model: Model, values: dict[str, float], wish: _Wish | None) -> tu
             continue
         span = _span(model, controller)
         if abs(set_point - measured) > 1e-6 * span:
-            found.append(_explained(model, controller, measured, wish))
+            found.append(_explained(model, controller, set_point, measured, wish))
     return tuple(found)
 
 
@@ -180,18 +180,26 @@ def _span(model: Model, controller: Controller) -> float:
     return ends[1].value - ends[0].value if ends[0] is not None and ends[1] is not None else 1.0
 
 
-def _explained(model: Model, controller: Controller, measured: float, wish: _Wish | None) -> Unreached:
+def _explained(model: Model, controller: Controller, wanted: float, measured: float, wish: _Wish | None) -> Unreached:
     needed = wish.values[controller.out] if wish is not None else float("nan")
     driven = [
         one.tag for one in model.assignments.values() if one.tree == Name(controller.out) and one.tag != controller.tag
     ]
     actuator = sorted(driven)[0] if driven else controller.tag
-    unit = model.signals[controller.pv].unit if controller.pv in model.signals else None
+    shown = _source(model, controller.pv)
+    unit = model.signals[shown].unit if shown in model.signals else None
     reached = f"{from_si(measured, unit, model.air_pressure):.4g} {unit.text}" if unit else f"{measured:.6g}"
-    sentence = f"the most that {controller.pv} reaches is {reached}"
+    sentence = f"the {'most' if wanted > measured else 'least'} that {shown} reaches is {reached}"
     if abs(needed) <= FARTHEST:
         sentence = f"{actuator} would have to be at {100 * needed:.3g} %; " + sentence
     return Unreached(controller, needed, measured, sentence)
+
+
+def _source(model: Model, name: str) -> str:
+    """The signal behind an input that only passes it on."""
+    while name in model.assignments and isinstance(tree := model.assignments[name].tree, Name):
+        name = tree.name
+    return name
 
 
 def eigenvalues(system: System, values: dict[str, float]) -> FloatArray:
