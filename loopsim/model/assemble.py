@@ -12,7 +12,7 @@ from loopsim.language.units import PERCENT
 from loopsim.model.draft import Absent, Draft
 from loopsim.model.elaborate import Elaboration
 from loopsim.model.elements import elements_of
-from loopsim.model.givens import boundary
+from loopsim.model.givens import boundary, check_keys
 from loopsim.model.layout import Instance, Layout, lay_out
 from loopsim.model.order import order_scans
 from loopsim.model.scales import Scales
@@ -40,7 +40,8 @@ def assemble(
     problems.raise_if_any()
     elements = {tag: elements_of(instance, problems) for tag, instance in layout.instances.items()}
     wiring = join(layout, elements, problems)
-    problems.raise_if_any()
+    for tag, instance in layout.instances.items():
+        check_keys(instance, elements[tag], problems)
     choices = choose(layout, wiring, problems)
     problems.raise_if_any()
     absent: set[str] = set()

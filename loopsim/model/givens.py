@@ -19,11 +19,13 @@ from loopsim.documents.types import (
     Value,
     Word,
 )
-from loopsim.errors import Where, nearest
+from loopsim.errors import Problems, Where, nearest
 from loopsim.language.evaluate import Table
 from loopsim.language.tree import Expression, Name, Number
 from loopsim.language.units import PERCENT, Unit, to_si
-from loopsim.model.draft import Absent, Draft
+from loopsim.model.draft import Absent, Draft, namespace
+from loopsim.model.elements import Elements
+from loopsim.model.layout import Instance
 from loopsim.model.liquids import property_of
 from loopsim.model.scales import ON_OFF, si_value
 from loopsim.model.translate import Translator, pair_parts
@@ -59,7 +61,6 @@ class Givens(Translator):
 
     def read_parameters(self) -> None:
         """Slots, tables and computed parameters; settings and faults."""
-        self._check_keys()
         for name, setting in self.block.settings.items():
             code = float(setting.choices.index(self.choices[name]))
             unit = Unit("setting", 1.0, 0.0, ON_OFF.dimension)
@@ -181,16 +182,6 @@ class Givens(Translator):
                     self.where,
                 )
 
-    def _check_keys(self) -> None:
-        known = known_keys(self.block) | set(self.members)
-        for key, given in self.values.items():
-            if key not in known:
-                self.draft.problems.add(
-                    f"'{self.tag}' ({self.block.name}) has no parameter, setting or input '{key}'",
-                    given.where,
-                    nearest(key, known, "it has"),
-                )
-
     # ------------------------------------------------------------ inputs
     def read_inputs(self) -> None:
         """What drives each input: a wire, a value or a default."""
@@ -283,6 +274,18 @@ class Givens(Translator):
             _slot(self.draft, flat, "input", value, unit, entry.where, entry.about)
         else:
             self.draft.assign(flat, self.tag, self.definition(default, index), entry.where)
+
+
+def check_keys(instance: Instance, elements: Elements, problems: Problems) -> None:
+    """Tell values given under names that the block does not have."""
+    known = known_keys(instance.block) | set(namespace(instance, elements))
+    for key, given in instance.values.items():
+        if key not in known:
+            problems.add(
+                f"'{instance.tag}' ({instance.block.name}) has no parameter, setting or input '{key}'",
+                given.where,
+                nearest(key, known, "it has"),
+            )
 
 
 def known_keys(block: Block) -> set[str]:

@@ -197,7 +197,7 @@ def _explained(model: Model, controller: Controller, wanted: float, measured: fl
 
 def _source(model: Model, name: str) -> str:
     """The signal behind an input that only passes it on."""
-    while name in model.assignments and isinstance(tree := model.assignments[name].tree, Name):
+    while name not in model.signals and isinstance(tree := model.assignments[name].tree, Name):
         name = tree.name
     return name
 
