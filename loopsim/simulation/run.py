@@ -29,6 +29,7 @@ from loopsim.simulation.starts import start_values
 
 MARK = "mark"  # among the pending: an event happens, to be noted
 ARMED = "armed"  # among the pending: a condition has held long enough once this time comes
+LOGGED = 200  # changes of one on/off signal that the log holds
 CROWD = 1000  # conditions may start each other this often in one instant
 
 
@@ -116,7 +117,9 @@ def prepare(
         for number, event in enumerate(scenario.events)
         if event.kind in ("ramp", "sine", "follow") and number not in skipped
     )
-    wishes = Wishes(tuple(dict.fromkeys(judged.values())), tuple(recorded.values()), conditions, moving)
+    flags = {name: name for name, signal in model.signals.items() if signal.unit is ON_OFF and resolve(model, name)}
+    watched = {**flags, **judged}
+    wishes = Wishes(tuple(dict.fromkeys(watched.values())), tuple(recorded.values()), conditions, moving)
     program = generate(model, wishes)
     machine = build(program.text, model.name)
     first = start_values(model, program, law, point)
@@ -125,7 +128,7 @@ def prepare(
     numbers = draws(model, first.p, program, machine, scenario.seed, run, lasts)
     state = start(machine, first.x, first.m, first.p, numbers, first.floors, program.starts)
     actions = Actions(model, scenario.events)
-    simulation = Simulation(model, program, machine, state, scenario, lasts, actions, dict(judged), tuple(recorded))
+    simulation = Simulation(model, program, machine, state, scenario, lasts, actions, watched, tuple(recorded))
     simulation.waiting = owners
     simulation.held = [False] * len(conditions)
     for number, event in enumerate(scenario.events):
@@ -363,6 +366,24 @@ def _result(simulation: Simulation, status: Status) -> RunResult:
     places = [program.watched.index(flat) for flat in simulation.judged.values()]
     pieces = Pieces(tuple(simulation.judged), starts, lengths, np.ascontiguousarray(samples[:, :, places]))
     units = {name: model.signals[name].unit for name in model.signals}
-    trends = Trends(time, columns, units, pieces, status, tuple(simulation.log), model.assumed, state.statistics())
+    trends = Trends(time, columns, units, pieces, status, _log(simulation, pieces), model.assumed, state.statistics())
     skipped = frozenset(k for k, event in enumerate(simulation.scenario.events) if not_applicable(event, model))
     return RunResult(trends, tuple(simulation.happened), skipped)
+
+
+def _log(simulation: Simulation, pieces: Pieces) -> tuple[LogEntry, ...]:
+    """What happened, in order of time: events, on/off signals that changed, a flow that turned round."""
+    model, found = simulation.model, list(simulation.log)
+    for place, name in enumerate(pieces.names):
+        signal = model.signals.get(name)
+        if signal is None or signal.unit is not ON_OFF:
+            continue
+        path = pieces.samples[:, [0, 4], place].ravel() > 0.5
+        times = np.stack([pieces.start, pieces.start + pieces.length], axis=1).ravel()
+        for change in (np.flatnonzero(path[1:] != path[:-1]) + 1)[:LOGGED].tolist():
+            word = "comes on" if path[change] else "goes off"
+            found.append(LogEntry(float(times[change]), f"{name} {word}", signal.tag, signal.where))
+    if not math.isnan(simulation.state.reversed_at):
+        text = "a flow through a full pipe turns round; it is held back, and counts as standing"
+        found.append(LogEntry(simulation.state.reversed_at, text))
+    return tuple(sorted(found, key=lambda one: one.time))
