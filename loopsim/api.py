@@ -11,7 +11,7 @@ from typing import Any
 from loopsim import __version__
 from loopsim.documents.load import read_scenario
 from loopsim.documents.types import Rule, Scenario
-from loopsim.errors import ComputationError, InputError, Problems, fail, nearest
+from loopsim.errors import ComputationError, Problems, fail, nearest
 from loopsim.language.tree import Name
 from loopsim.language.units import difference_of, from_si
 from loopsim.model.choice import Source, scenario_sources, source_of
@@ -247,13 +247,7 @@ def steady(source: Source, points: Sequence[str] = ("",)) -> SteadyReport:
 
 
 def _steady(source: Source, point: str) -> tuple[Model, OperatingPoint, bool | None]:
-    from loopsim.model.audit import audit
-
-    law = source.law(point)
-    found = rest(law)
-    problems = audit(law, found.values)
-    if problems:
-        raise InputError(problems)
+    law, found = source.law(point), source.rested(point)
     timed = source.timed(point=point)
     if dead_time_in_loop(timed, influences(timed)):
         return law, found, None

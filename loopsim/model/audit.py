@@ -14,7 +14,7 @@ from loopsim.model.numbers import FloatArray, System
 from loopsim.model.rest import eigenvalues_of
 from loopsim.model.types import Controller, Model
 
-SLOW = 1e-6  # 1/s: a real frequency below every lag and above nought, so that integrating plants have a gain too
+SLOW = 1e-10  # 1/s: a real frequency below every lag and above nought, so that integrating plants have a gain too
 
 
 def audit(model: Model, values: dict[str, float]) -> list[Problem]:

@@ -61,7 +61,7 @@ class Source:
 
 def _audited(law: Model) -> OperatingPoint:
     found = rest(law)
-    problems = audit(law, found.values)
+    problems = audit(law, found.wished)
     if problems:
         raise InputError(problems)
     return found

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Collection, Mapping
 from dataclasses import dataclass, field
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,11 +19,23 @@ FloatArray = NDArray[np.float64]
 Slopes = dict[int, float]
 
 
-def relaxed(tree: Expression) -> Expression:
-    """A tree whose `clip` lets everything pass: what would be needed if nothing had a limit."""
-    return transform(
-        tree, lambda node: node.arguments[0] if isinstance(node, Call) and node.function == "clip" else node
-    )
+def relaxed(tree: Expression, given: Collection[str]) -> Expression:
+    """A tree whose limits let everything pass: what would be needed if nothing had a limit.
+
+    Limits are `clip`, and `min` or `max` with something that the plant gives (`given`).
+    """
+
+    def opened(node: Expression) -> Expression:
+        if not isinstance(node, Call):
+            return node
+        if node.function == "clip":
+            return node.arguments[0]
+        if node.function in ("min", "max"):
+            moving = [one for one in node.arguments if not names_in(one) <= set(given)]
+            return moving[0] if len(moving) == 1 else node
+        return node
+
+    return transform(tree, opened)
 
 
 @dataclass(frozen=True, slots=True)
@@ -57,8 +70,10 @@ class System:
     _settled: dict[str, float | Table] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
-        change: Callable[[Expression], Expression] = relaxed if self.free_of_limits else (lambda tree: tree)
         model = self.model
+        change: Callable[[Expression], Expression] = (
+            partial(relaxed, given=model.slots) if self.free_of_limits else (lambda tree: tree)
+        )
         self.unknowns = list(model.states)
         self.states = len(self.unknowns)
         rows = [change(state.rate) for state in model.states.values()]

@@ -32,11 +32,13 @@ class Unreached:
 
 @dataclass(frozen=True, slots=True)
 class OperatingPoint:
-    """Values at rest of every name [SI], whether the rest is stable (None: not told), and set points out of reach."""
+    """Values at rest of every name [SI], and set points out of reach.
+
+    `wished` are the values that would be if nothing had a limit: there the signs of loops can be told.
+    """
 
     values: dict[str, float]
-    unknowns: FloatArray
-    stable: bool | None
+    wished: dict[str, float]
     unreached: tuple[Unreached, ...]
 
 
@@ -47,10 +49,11 @@ def rest(model: Model, guess: FloatArray | None = None) -> OperatingPoint:
     """
     system = System(model)
     begin = system.starts() if guess is None else guess
-    wish = _wished(model, begin)
+    wish = _wished(model, begin) if model.controllers else None
     u = settled(system, begin if wish is None else wish.unknowns)
     values = system.values(u)
-    return OperatingPoint(values, u, None, _unreached(model, values, wish))
+    wished = wish.values if wish is not None else values
+    return OperatingPoint(values, wished, _unreached(model, values, wish))
 
 
 @dataclass(frozen=True, slots=True)
@@ -71,19 +74,25 @@ def _wished(model: Model, begin: FloatArray) -> _Wish | None:
         for name, slot in model.slots.items()
     }
     system = System(replace(model, slots=slots), free_of_limits=True)
-    try:
-        u = settled(system, begin)
-    except ComputationError:
-        return None
-    return _Wish(u, system.values(u))
+    # Newton's method at once: an unstable loop would run away from its rest in time
+    for first in (LAST_STEP, 1.0):
+        try:
+            u = settled(system, begin, first)
+        except ComputationError:
+            continue
+        return _Wish(u, system.values(u))
+    return None
 
 
-def settled(system: System, u: FloatArray) -> FloatArray:
-    """Follow the plant to its rest by implicit Euler steps that grow until they are Newton's method on the rates."""
+def settled(system: System, u: FloatArray, first: float = 1.0) -> FloatArray:
+    """Follow the plant to its rest by implicit Euler steps that grow until they are Newton's method on the rates.
+
+    `first` [s] is the first step.
+    """
     if not len(u):
         return u
     mass = np.array([1.0] * system.states + [0.0] * (len(u) - system.states))
-    step = 1.0
+    step = first
     for _ in range(STEPS):
         trial = _implicit_step(system, u, mass / step)
         if trial is None:
