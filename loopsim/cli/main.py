@@ -94,5 +94,9 @@ def _told(error: Exception, as_json: bool) -> int:
 
 def _problem(problem: Any) -> dict[str, Any]:
     where = problem.where
-    place = {"file": where.file, "line": where.line, "column": where.column} if where else dict.fromkeys(("file", "line", "column"))
+    place = (
+        {"file": where.file, "line": where.line, "column": where.column}
+        if where
+        else dict.fromkeys(("file", "line", "column"))
+    )
     return {**place, "what": problem.what, "hint": problem.hint}

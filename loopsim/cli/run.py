@@ -18,10 +18,14 @@ from loopsim.output.text import render
 @click.argument("scenarios", nargs=-1, required=True, type=click.Path(path_type=Path))
 @click.option("--strategy", default="", help="Run this strategy only.")
 @click.option("--points", default="", help="Run at this operating point of the plant.")
-@click.option("--out", type=click.Path(path_type=Path), help="Write trends (CSV), pictures, JSON and a JUnit file here.")
+@click.option(
+    "--out", type=click.Path(path_type=Path), help="Write trends (CSV), pictures, JSON and a JUnit file here."
+)
 @click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output.")
 @click.option("--interpreted", is_flag=True, help="Run without compilation (always so in this version).")
-@click.option("--cache", type=click.Path(path_type=Path), help="Where compiled plants are kept (not used in this version).")
+@click.option(
+    "--cache", type=click.Path(path_type=Path), help="Where compiled plants are kept (not used in this version)."
+)
 @click.option("--timing", is_flag=True, help="Print how long it took to standard error.")
 def command(
     scenarios: tuple[Path, ...],

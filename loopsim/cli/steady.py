@@ -14,7 +14,9 @@ from loopsim.output.text import render
 
 @click.command("steady")
 @click.argument("model", type=click.Path(path_type=Path))
-@click.option("--with", "strategies", multiple=True, type=click.Path(path_type=Path), help="A strategy laid over the plant.")
+@click.option(
+    "--with", "strategies", multiple=True, type=click.Path(path_type=Path), help="A strategy laid over the plant."
+)
 @click.option("--strategy", default="", help="A scenario's strategy.")
 @click.option("--points", default="", help="Operating points, separated by commas, or `all`.")
 @click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output.")

@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-import importlib
 from pathlib import Path
 
 from loopsim.documents.block import block_from
+from loopsim.documents.check_block import check_block
 from loopsim.documents.document import read_tree
 from loopsim.documents.types import Block
 from loopsim.errors import InputError, Problems, Where, fail, nearest
@@ -71,7 +71,7 @@ class Library:
             what = f"the block '{block.name}' stands in the file '{path.name}'"
             problems.add(what, block.where, "give both one name")
         if not problems.found:
-            _check(block, problems)
+            check_block(block, problems)
         problems.raise_if_any()
         return block
 
@@ -95,11 +95,3 @@ def _files(folder: Path) -> dict[str, Path]:
             problems.add(f"two files hold the block '{path.stem}': '{other}' and '{path}'", None, "rename one of them")
     problems.raise_if_any()
     return found
-
-
-def _check(block: Block, problems: Problems) -> None:
-    try:
-        check = importlib.import_module("loopsim.documents.check_block")
-    except ModuleNotFoundError:  # to become a plain import at the top as soon as that file is there
-        return
-    check.check_block(block, problems)

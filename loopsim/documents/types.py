@@ -10,16 +10,38 @@ from dataclasses import dataclass, field
 
 from loopsim.documents.written import (
     ByChoice as ByChoice,
+)
+from loopsim.documents.written import (
     Definition as Definition,
+)
+from loopsim.documents.written import (
     Formula as Formula,
+)
+from loopsim.documents.written import (
     Given as Given,
+)
+from loopsim.documents.written import (
     NameList as NameList,
+)
+from loopsim.documents.written import (
     PairValue as PairValue,
+)
+from loopsim.documents.written import (
     Quantity as Quantity,
+)
+from loopsim.documents.written import (
     TableValue as TableValue,
+)
+from loopsim.documents.written import (
     UnitSpec as UnitSpec,
+)
+from loopsim.documents.written import (
     UnitText as UnitText,
+)
+from loopsim.documents.written import (
     Value as Value,
+)
+from loopsim.documents.written import (
     Word as Word,
 )
 from loopsim.errors import Where

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 
-from loopsim.language.evaluate import evaluate
+from loopsim.language.evaluate import PURE, evaluate
 from loopsim.language.tree import Call, Expression, Name, Number, Operation, Rate, names_in, parts, rebuild
 
 ZERO, ONE = Number(0.0), Number(1.0)
-ENGINE_CALLS = ("switch", "switched")  # calls whose number arguments are places, not values
+FOLDED = (*PURE, "where")  # calls that are a number as soon as their arguments are
 
 
 def substitute(tree: Expression, names: Mapping[str, Expression]) -> Expression:
@@ -29,7 +29,7 @@ def _simplified(node: Expression) -> Expression:
     below = parts(node)
     if not below or isinstance(node, Rate):
         return node
-    if all(isinstance(part, Number) for part in below) and not _engine_call(node):
+    if all(isinstance(part, Number) for part in below) and _foldable(node):
         return Number(float(evaluate(node, {})))
     if isinstance(node, Operation):
         rule = RULES.get(node.operator)
@@ -37,8 +37,8 @@ def _simplified(node: Expression) -> Expression:
     return _simple_where(node) if isinstance(node, Call) and node.function == "where" else node
 
 
-def _engine_call(node: Expression) -> bool:
-    return isinstance(node, Call) and node.function in ENGINE_CALLS
+def _foldable(node: Expression) -> bool:
+    return isinstance(node, Operation) or (isinstance(node, Call) and node.function in FOLDED)
 
 
 def _sum(node: Expression, a: Expression, b: Expression) -> Expression:
@@ -62,7 +62,7 @@ def _quotient(node: Expression, a: Expression, b: Expression) -> Expression:
 
 
 def _power(node: Expression, a: Expression, b: Expression) -> Expression:
-    return a if b == ONE else node
+    return a if b == ONE else ONE if b == ZERO else node
 
 
 def _negative(node: Expression, a: Expression) -> Expression:
@@ -122,42 +122,68 @@ def derivative(tree: Expression, name: str) -> Expression:
     if tree.function in PIECEWISE:
         return PIECEWISE[tree.function](tree.arguments, name)
     outer = OUTER.get(tree.function)
-    return _operation("*", outer(tree), derivative(tree.arguments[0], name)) if outer is not None else ZERO
+    return _chained(outer(tree), derivative(tree.arguments[0], name)) if outer is not None else ZERO
+
+
+def _chained(outer: Expression, inner: Expression) -> Expression:
+    """Outer slope times inner slope."""
+    return _spread(lambda slope: _operation("*", outer, slope), inner)
+
+
+def _spread(change: Callable[[Expression], Expression], slope: Expression) -> Expression:
+    """A change of a slope that leaves 0 at 0, made in its branches: where one is 0 a factor may well be infinite."""
+    if isinstance(slope, Call) and slope.function == "where" and ZERO in _branches(slope):
+        branches = [_spread(change, one) for one in _branches(slope)]
+        return _simple_where(_where_of(slope.arguments[:-1:2], branches))
+    return ZERO if slope == ZERO else change(slope)
+
+
+def _branches(where: Call) -> tuple[Expression, ...]:
+    return (*where.arguments[1::2], where.arguments[-1])
+
+
+def _where_of(conditions: Sequence[Expression], branches: Sequence[Expression]) -> Call:
+    """`where` from its conditions and branches, one branch more than conditions."""
+    pairs = zip(conditions, branches, strict=False)
+    return Call("where", (*[one for pair in pairs for one in pair], branches[-1]))
 
 
 def _of_operation(tree: Operation, name: str) -> Expression:
-    if tree.operator == "neg":
-        return _operation("neg", derivative(tree.arguments[0], name))
-    if tree.operator not in ("+", "-", "*", "/", "^"):
-        return ZERO
-    a, b = tree.arguments
-    da, db = derivative(a, name), derivative(b, name)
+    slopes = [derivative(one, name) for one in tree.arguments]
     match tree.operator:
+        case "neg":
+            return _spread(lambda slope: _operation("neg", slope), slopes[0])
+        case "+" | "-":
+            return _operation(tree.operator, *slopes)
         case "*":
-            return _operation("+", _operation("*", da, b), _operation("*", a, db))
+            a, b = tree.arguments
+            by_a = _spread(lambda slope: _operation("*", slope, b), slopes[0])
+            return _operation("+", by_a, _chained(a, slopes[1]))
         case "/":
-            top = _operation("-", da, _operation("*", tree, db)) if db != ZERO else da
-            return _operation("/", top, b)
+            return _of_quotient(tree, *slopes)
         case "^":
-            return _of_power(tree, a, b, da, db)
-    return _operation(tree.operator, da, db)
+            return _of_power(tree, *slopes)
+    return ZERO
 
 
-def _of_power(tree: Operation, a: Expression, b: Expression, da: Expression, db: Expression) -> Expression:
+def _of_quotient(tree: Operation, da: Expression, db: Expression) -> Expression:
+    below = tree.arguments[1]
+    top = _operation("-", da, _operation("*", tree, db))
+    return _spread(lambda slope: _operation("/", slope, below), top)
+
+
+def _of_power(tree: Operation, da: Expression, db: Expression) -> Expression:
+    a, b = tree.arguments
     lowered = _operation("*", b, _operation("^", a, _operation("-", b, ONE)))
-    by_base = _operation("*", lowered, da)
-    by_exponent = _operation("*", _operation("*", tree, _call("log", a)), db) if db != ZERO else ZERO
-    return _operation("+", by_base, by_exponent)
+    by_exponent = _chained(_operation("*", tree, _call("log", a)), db)
+    return _operation("+", _chained(lowered, da), by_exponent)
 
 
 def _of_where(arguments: tuple[Expression, ...], name: str) -> Expression:
     branches = [derivative(one, name) for one in (*arguments[1::2], arguments[-1])]
     if all(one == ZERO for one in branches):
         return ZERO
-    kept: list[Expression] = []
-    for condition, branch in zip(arguments[:-1:2], branches, strict=False):
-        kept += [condition, branch]
-    return _simple_where(Call("where", (*kept, branches[-1])))
+    return _simple_where(_where_of(arguments[:-1:2], branches))
 
 
 def _of_extreme(sign: str) -> Callable[[tuple[Expression, ...], str], Expression]:
@@ -182,7 +208,7 @@ def _of_clip(arguments: tuple[Expression, ...], name: str) -> Expression:
 
 
 def _of_interp(arguments: tuple[Expression, ...], name: str) -> Expression:
-    return _operation("*", Call("interp_slope", arguments), derivative(arguments[1], name))
+    return _chained(Call("interp_slope", arguments), derivative(arguments[1], name))
 
 
 PIECEWISE: dict[str, Callable[[tuple[Expression, ...], str], Expression]] = {

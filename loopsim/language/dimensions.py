@@ -43,43 +43,41 @@ class Dimension:
         """The dimension as a unit that engineers read: `W`, `W/K`, `kg/m^3`, `dimensionless`."""
         if not self.powers:
             return "dimensionless"
-        for per, below in DENOMINATORS.items():
-            for name, powers in NAMED.items():
-                if self == Dimension.of(powers).divide(Dimension.of(below)):
-                    return f"{name}/{per}" if per else name
+        if self in NAMED:
+            return NAMED[self]
         above = [_factor(name, power) for name, power in self.powers if power > 0]
-        below_texts = [_factor(name, -power) for name, power in self.powers if power < 0]
-        top = "*".join(above) or "1"
-        if not below_texts:
+        below = [_factor(name, -power) for name, power in self.powers if power < 0]
+        top, bottom = "*".join(above) or "1", "*".join(below)
+        if not below:
             return top
-        bottom = "*".join(below_texts)
-        return f"{top}/({bottom})" if len(below_texts) > 1 else f"{top}/{bottom}"
+        return f"{top}/({bottom})" if len(below) > 1 else f"{top}/{bottom}"
 
 
 def _factor(name: str, power: Fraction) -> str:
-    shown = f"what {name[1:]} is in" if name.startswith("?") else name
+    shown = f"(unit of {name[1:]})" if name.startswith("?") else name
     if power == 1:
         return shown
     return f"{shown}^{power}" if power.denominator == 1 else f"{shown}^({power})"
 
 
+def _named() -> dict[Dimension, str]:
+    """Dimensions that engineers know by another unit than the product of base units."""
+    texts = """
+    N 1 1 -2 | Pa 1 -1 -2 | J 1 2 -2 | W 1 2 -3 | V 1 2 -3 0 0 -1 | ohm 1 2 -3 0 0 -2 | S -1 -2 3 0 0 2
+    Pa*s 1 -1 -1 | Pa/m 1 -2 -2 | N/m 1 0 -2 | S/m -1 -3 3 0 0 2
+    J/K 1 2 -2 -1 | J/kg 0 2 -2 | J/(kg*K) 0 2 -2 -1 | J/(m^3*K) 1 -1 -2 -1 | J/mol 1 2 -2 0 -1 | J/(mol*K) 1 2 -2 -1 -1
+    W/K 1 2 -3 -1 | W/m^2 1 0 -3 | W/m^3 1 -1 -3 | W/(m*K) 1 1 -3 -1 | W/(m^2*K) 1 0 -3 -1 | K/W -1 -2 3 1
+    """
+    found = {}
+    for entry in texts.replace("\n", "|").split("|"):
+        name, *powers = entry.split() or [""]
+        if name:
+            found[Dimension.of(dict(zip(BASES, map(int, powers), strict=False)))] = name
+    return found
+
+
 NONE = Dimension()
-NAMED: dict[str, dict[str, int]] = {
-    "W": {"kg": 1, "m": 2, "s": -3},
-    "J": {"kg": 1, "m": 2, "s": -2},
-    "Pa": {"kg": 1, "m": -1, "s": -2},
-    "N": {"kg": 1, "m": 1, "s": -2},
-}
-DENOMINATORS: dict[str, dict[str, int]] = {
-    "": {},
-    "K": {"K": 1},
-    "(m^2*K)": {"m": 2, "K": 1},
-    "m^3": {"m": 3},
-    "kg": {"kg": 1},
-    "(kg*K)": {"kg": 1, "K": 1},
-    "mol": {"mol": 1},
-    "(mol*K)": {"mol": 1, "K": 1},
-}
+NAMED = _named()
 
 
 def unknown(name: str) -> Dimension:

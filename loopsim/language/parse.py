@@ -2,30 +2,49 @@
 
 from __future__ import annotations
 
+import math
 import re
+from collections.abc import Callable
 from dataclasses import dataclass
 
 from loopsim.errors import nearest
 from loopsim.language.functions import FUNCTIONS
-from loopsim.language.tree import COMPARISONS, Call, Expression, Index, Name, Number, Operation, Rate
+from loopsim.language.tree import COMPARISONS, Call, Expression, Index, Name, Number, Operation, Rate, parts
 
 LONGEST = 2000
 DEEPEST = 50
+TALLEST = 150  # operations on top of each other, so that walks over a tree never run out of stack
 GREATEST_POWER = 20
+DOTTED = ("low", "high", "takes", "up", "down")
 TOKEN = re.compile(
     r"\s*(?:(?P<number>(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)|(?P<name>[A-Za-z_]\w*(?:\.[A-Za-z_]\w*)*)"
-    r"|(?P<sign>\*\*|<=|>=|==|!=|[-+*/^()<>,=\[\]]))"
+    r"|(?P<sign>\*\*|<=|>=|==|!=|[-+*/^()<>,=\[\]]))",
+    re.ASCII,
 )
 CURES = {
     "**": "write ^ for a power",
-    "%": "numbers in a formula have no unit; give the share as a number or a `let` of its own",
+    "%": "numbers in a formula have no unit: write 0.1 for 10 %",
     "&": "write and",
     "|": "write or",
     "!": "write not",
     ";": "one formula at a time",
+    ".": "a dot stands between a name and low, high, takes, up or down, without spaces",
     '"': "names are written without quotes",
     "'": "names are written without quotes",
+    "²": "write ^2",
+    "³": "write ^3",
+    "·": "write *",
+    "×": "write *",
+    "÷": "write /",
+    "−": "write - (a plain minus sign)",
+    "≤": "write <=",
+    "≥": "write >=",
+    "≠": "write !=",
+    "√": "write sqrt(x)",
 }
+FACTORS = "write * between factors; a number with a unit is a `let` of its own"
+RATE = "a derivative is written dX/dt or d(expression)/dt"
+RATE_PLACE = "a derivative dX/dt stands in a balance: name: left = right"
 
 
 class FormulaError(ValueError):
@@ -44,10 +63,11 @@ class _Token:
 
 
 def parse_formula(text: str) -> Expression:
-    """A formula's tree; nodes' `at` is the column in the text. Raises `FormulaError`."""
+    """A formula's tree; nodes' `at` is the column in the text, from 0. Raises `FormulaError`."""
     parser = _Parser(text, rates=False)
     tree = parser.formula()
-    parser.finish()
+    parser.finish("write == to compare")
+    _check_height(tree)
     return tree
 
 
@@ -55,22 +75,25 @@ def parse_balance(text: str) -> tuple[Expression, Expression]:
     """Both sides of `left = right`, with `dX/dt` and `d(expression)/dt`. Raises `FormulaError`."""
     parser = _Parser(text, rates=True)
     left = parser.formula()
-    parser.expect("=", "a balance has two sides, `left = right`")
+    compared = isinstance(left, Operation) and left.operator == "=="
+    parser.expect("=", "write = between the sides, not ==" if compared else "a balance has two sides, `left = right`")
     right = parser.formula()
-    parser.finish()
+    parser.finish("a balance has one =; write == to compare")
+    for side in (left, right):
+        _check_height(side)
     return left, right
 
 
 def parse_key(text: str) -> tuple[str, Index | None]:
     """The name and index of an entry: `T`, `T[i]`, `T[0]`, `T[n+1]`. Raises `FormulaError`."""
-    match = re.fullmatch(r"\s*([A-Za-z_]\w*)\s*(?:\[(.*)\])?\s*", text)
+    match = re.fullmatch(r"\s*([A-Za-z_]\w*)\s*(?:\[(.*)\])?\s*", text, re.ASCII)
     if match is None:
         raise FormulaError(f"'{text}' is not a name", 0, "write a name, or a name with an index such as T[i]")
     return match[1], _index(match[2], match.start(2)) if match[2] is not None else None
 
 
 def _index(text: str, at: int) -> Index:
-    match = re.fullmatch(r"\s*(?:([A-Za-z_]\w*)\s*)?(?:([+-]?)\s*(\d+))?\s*", text)
+    match = re.fullmatch(r"\s*(?:([A-Za-z_]\w*)\s*)?(?:([+-]?)\s*(\d+))?\s*", text, re.ASCII)
     if match is None or not text.strip() or (match[1] and match[3] and not match[2]):
         raise FormulaError(
             f"'[{text}]' is not an index", at, "write a letter, a number, or a letter with + or - a number"
@@ -103,6 +126,7 @@ class _Parser:
     def __init__(self, text: str, rates: bool) -> None:
         self.tokens, self.place, self.rates, self.depth = _tokens(text), 0, rates, 0
 
+    # ------------------------------------------------------------ tokens
     @property
     def next(self) -> _Token:
         return self.tokens[self.place]
@@ -120,26 +144,40 @@ class _Parser:
 
     def expect(self, text: str, hint: str = "") -> None:
         if not self.accept(text):
-            found = f"'{self.next.text}' found" if self.next.text else "the formula ends"
-            raise FormulaError(f"'{text}' is wanted, {found}", self.next.at, hint)
+            raise FormulaError(f"'{text}' is wanted, {self._found()}", self.next.at, hint or self._cure())
 
-    def finish(self) -> None:
-        if self.next.kind == "end":
-            return
-        hint = "write == to compare" if self.next.text == "=" else ""
-        if self.next.kind in ("name", "number"):
-            hint = "write * between factors; a number with a unit is a `let` of its own"
-        raise FormulaError(f"'{self.next.text}' is one too many", self.next.at, hint)
+    def finish(self, equals: str) -> None:
+        """Refuse what is left; `equals` is the cure for a sign = too many."""
+        if self.next.kind != "end":
+            hint = equals if self.next.text == "=" else self._cure()
+            raise FormulaError(f"'{self.next.text}' is one too many", self.next.at, hint)
 
-    def formula(self) -> Expression:
+    def _found(self) -> str:
+        return f"'{self.next.text}' found" if self.next.kind != "end" else "the formula ends"
+
+    def _cure(self) -> str:
+        """What helps where the next token cannot stand."""
+        token = self.next
+        if token.kind == "number" and token.text.startswith("."):
+            return "an element is written with its index: u[1]"
+        if token.text == "not":
+            return "put parentheses round not and what it belongs to"
+        if token.kind in ("name", "number"):
+            return FACTORS
+        return "write == to compare" if token.text == "=" else ""
+
+    def deeper(self, below: Callable[[], Expression], what: str) -> Expression:
+        """What `below` reads, one level further down."""
         self.depth += 1
         if self.depth > DEEPEST:
-            raise FormulaError(
-                f"more than {DEEPEST} parentheses inside each other", self.next.at, "use `let` for parts of it"
-            )
-        tree = self._binary(("or",), self._and)
+            raise FormulaError(f"more than {DEEPEST} {what}", self.next.at, "use `let` for parts of it")
+        tree = below()
         self.depth -= 1
         return tree
+
+    # ------------------------------------------------------------ what binds two sides
+    def formula(self) -> Expression:
+        return self.deeper(lambda: self._binary(("or",), self._and), "parentheses inside each other")
 
     def _and(self) -> Expression:
         return self._binary(("and",), self._not)
@@ -147,7 +185,7 @@ class _Parser:
     def _not(self) -> Expression:
         if self.next.text == "not":
             at = self.take().at
-            return Operation("not", (self._not(),), at)
+            return Operation("not", (self.deeper(self._not, "times not in a row"),), at)
         return self._comparison()
 
     def _comparison(self) -> Expression:
@@ -166,11 +204,11 @@ class _Parser:
     def _product(self) -> Expression:
         return self._binary(("*", "/"), self._minus)
 
-    def _binary(self, signs: tuple[str, ...], below: object) -> Expression:
-        tree: Expression = below()  # type: ignore[operator]
+    def _binary(self, signs: tuple[str, ...], below: Callable[[], Expression]) -> Expression:
+        tree = below()
         while self.next.text in signs:
             token = self.take()
-            tree = Operation(token.text, (tree, below()), token.at)  # type: ignore[operator]
+            tree = Operation(token.text, (tree, below()), token.at)
         return tree
 
     def _minus(self) -> Expression:
@@ -189,55 +227,49 @@ class _Parser:
         if self.next.text != "^":
             return base
         token = self.take()
-        self.depth += 1
-        if self.depth > DEEPEST:
-            raise FormulaError(f"more than {DEEPEST} powers of powers", token.at)
-        exponent = self._minus()
-        self.depth -= 1
+        exponent = self.deeper(self._minus, "powers of powers")
         _check_exponent(exponent)
         return Operation("^", (base, exponent), token.at)
 
+    # ------------------------------------------------------------ numbers, names, calls
     def _atom(self) -> Expression:
-        token = self.take()
-        if token.text == "(":
+        token = self.next
+        if self.accept("("):
             tree = self.formula()
             self.expect(")")
             return tree
         if token.kind == "number":
-            return Number(float(token.text), token.at)
-        if token.kind != "name":
-            found = f"'{token.text}' found" if token.text else "the formula ends"
-            raise FormulaError(f"a name, a number or '(' is wanted, {found}", token.at)
-        return self._named(token)
+            return _number(self.take())
+        if token.kind == "name" and token.text not in ("and", "or", "not"):
+            return self._named(self.take())
+        hint = self._cure() if token.text == "not" else ""
+        raise FormulaError(f"a name, a number or '(' is wanted, {self._found()}", token.at, hint)
 
     def _named(self, token: _Token) -> Expression:
-        if self.rates and token.text == "d" and self.next.text == "(":
-            self.take()
+        if self.rates and token.text == "d" and self.accept("("):
             inner = self.formula()
             self.expect(")")
             return self._rate(inner, token.at)
         if self.accept("("):
             return self._call(token)
-        index = None
-        if self.accept("["):
-            index = self._bracket()
-        if self.rates and token.text.startswith("d") and len(token.text) > 1 and self._over_time():
+        index = self._bracket() if self.accept("[") else None
+        if token.text.startswith("d") and len(token.text) > 1 and self._over_time():
+            if not self.rates:
+                raise FormulaError(f"'{token.text}/dt' cannot stand here", token.at, RATE_PLACE)
             return self._rate(Name(token.text[1:], index, token.at + 1), token.at)
-        if token.text in ("and", "or", "not"):
-            raise FormulaError(f"'{token.text}' cannot stand here", token.at)
-        return Name(token.text, index, token.at)
+        return _name(token, index)
 
     def _over_time(self) -> bool:
         return self.next.text == "/" and self.tokens[self.place + 1].text == "dt"
 
     def _rate(self, argument: Expression, at: int) -> Expression:
-        self.expect("/", "a derivative is written dX/dt or d(expression)/dt")
-        self.expect("dt", "a derivative is written dX/dt or d(expression)/dt")
+        self.expect("/", RATE)
+        self.expect("dt", RATE)
         return Rate(argument, at)
 
     def _bracket(self) -> Index:
         start, text = self.next.at, ""
-        while self.next.text not in ("]", "") and self.next.kind != "end":
+        while self.next.text != "]" and self.next.kind != "end":
             text += self.take().text
         self.expect("]")
         return _index(text, start)
@@ -253,33 +285,62 @@ class _Parser:
             while self.accept(","):
                 arguments.append(self.formula())
             self.expect(")")
-        count = len(arguments)
-        if count < function.least or (function.most is not None and count > function.most):
-            wanted = str(function.least) if function.most == function.least else f"{function.least} or more"
-            raise FormulaError(f"'{token.text}' takes {wanted} arguments, {count} given", token.at)
-        if token.text == "where" and count % 2 == 0:
-            hint = "write where(condition, value, …, otherwise)"
-            raise FormulaError("'where' has no value for the case that no condition holds", token.at, hint)
+        _check_count(token, len(arguments), function.least, function.most)
         return Call(token.text, tuple(arguments), token.at)
+
+
+def _number(token: _Token) -> Number:
+    value = float(token.text)
+    if math.isinf(value):
+        raise FormulaError(f"'{token.text}' is too large for a number", token.at)
+    return Number(value, token.at)
+
+
+def _name(token: _Token, index: Index | None) -> Name:
+    if token.text == "dt":
+        raise FormulaError("'dt' stands only in dX/dt", token.at, RATE)
+    stem, *dotted = token.text.split(".")
+    if dotted and (len(dotted) > 1 or dotted[0] not in DOTTED):
+        what = f"'.{'.'.join(dotted)}' cannot follow a name"
+        hint = "range.low and range.high are the ends of a pair, out.takes, out.up, out.down the answers to an output"
+        raise FormulaError(what, token.at + len(stem), hint)
+    return Name(token.text, index, token.at)
+
+
+def _check_count(token: _Token, count: int, least: int, most: int | None) -> None:
+    """Refuse a call with too few or too many arguments."""
+    if count < least or (most is not None and count > most):
+        wanted = f"{least}" if most == least else f"{least} or more"
+        plural = "" if wanted == "1" else "s"
+        raise FormulaError(f"'{token.text}' takes {wanted} argument{plural}, {count} given", token.at)
+    if token.text == "where" and count % 2 == 0:
+        hint = "write where(condition, value, …, otherwise)"
+        raise FormulaError("'where' has no value for the case that no condition holds", token.at, hint)
+
+
+def _check_height(tree: Expression) -> None:
+    level, height = [tree], 0
+    while level:
+        level = [part for node in level for part in parts(node)]
+        height += 1
+    if height > TALLEST:
+        raise FormulaError(f"more than {TALLEST} operations in a row", 0, "use `let` for parts of it")
 
 
 def _check_exponent(exponent: Expression) -> None:
     """A constant exponent is small, so that no formula can ask for a huge number."""
-    sign, inner = 1.0, exponent
-    while isinstance(inner, Operation) and inner.operator == "neg":
-        sign, inner = -sign, inner.arguments[0]
-    value = _constant(inner)
-    if value is not None and abs(value) > GREATEST_POWER:
-        raise FormulaError(f"the exponent {sign * value:g}", exponent.at, f"{GREATEST_POWER} is the greatest")
+    value = constant(exponent)
+    if value is not None and not abs(value) <= GREATEST_POWER:
+        raise FormulaError(f"the exponent {value:g}", exponent.at, f"{GREATEST_POWER} is the greatest")
 
 
-def _constant(tree: Expression) -> float | None:
+def constant(tree: Expression) -> float | None:
     """The number that a tree without names stands for, as far as sums, products and powers go."""
     if isinstance(tree, Number):
         return tree.value
     if not isinstance(tree, Operation) or tree.operator not in ("+", "-", "*", "/", "^", "neg"):
         return None
-    values = [_constant(part) for part in tree.arguments]
+    values = [constant(part) for part in tree.arguments]
     known = [value for value in values if value is not None]
     if len(known) != len(values):
         return None

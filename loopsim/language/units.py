@@ -78,6 +78,7 @@ hL = 100 * L
 N = kg * m / s ** 2
 kN = 1000 * N
 Pa = N / m ** 2
+mPa = 0.001 * Pa
 kPa = 1000 * Pa
 MPa = 1000000 * Pa
 bar = 100000 * Pa
@@ -91,6 +92,7 @@ kW = 1000 * W
 MW = 1000000 * W
 Wh = 3600 * J
 kWh = 1000 * Wh
+MWh = 1000000 * Wh
 kmol = 1000 * mol
 mmol = 0.001 * mol
 umol = 0.000001 * mol
@@ -128,24 +130,45 @@ POINTS = {
     "degC": ("K", 1.0, KELVIN),
     "degF": ("K", RANKINE, KELVIN - 32.0 * RANKINE),
 }
+LONGEST = 60
 PRESSURES = ("bar", "mbar", "Pa", "kPa", "MPa", "psi")
+LETTERS = str.maketrans(
+    {
+        "²": "^2",
+        "³": "^3",
+        "·": "*",
+        "×": "*",
+        "⋅": "*",
+        "÷": "/",
+        "µ": "u",
+        "μ": "u",
+        "Ω": "ohm",
+        "℃": "degC",
+        "−": "-",
+    }
+)
 CURES = {
     "C": "write degC for a point on the scale, K for a difference",
     "°C": "write degC for a point on the scale, K for a difference",
+    "degK": "write K",
     "F": "write degF for a point on the scale, K for a difference",
+    "°F": "write degF for a point on the scale, K for a difference",
+    "degF": "inside a compound unit write K; a difference of 1 degF is 5/9 K",
     "T": "write t for a tonne",
     "l": "write L for a litre",
     "lpm": "write L/min",
     "ml": "write mL",
+    "hl": "write hL",
+    "cSt": "write mm^2/s",
+    "in": "write inch",
+    "ton": "write t for a tonne",
     "hr": "write h",
     "sec": "write s",
     "mins": "write min",
+    "day": "write d",
     "M": "write mol/L",
     "a": "write the time in d",
-    "barg": "write bar(g)",
-    "bara": "write bar(a)",
-    "psig": "write psi(g)",
-    "psia": "write psi(a)",
+    "atm": "write bar(a), or bar for a difference",
     "Nm3": "write kg, or m^3 at a stated pressure and temperature",
     "scfm": "write kg/h",
     "deg_C": "write degC",
@@ -155,8 +178,11 @@ CURES = {
     "-": "write dimensionless",
     "1": "write dimensionless",
     "kcal": "write kJ",
+    "BTU": "write kJ",
     "hp": "write kW",
 }
+_FACTOR = r"(?:[^\W\d]\w*|%|\0)(?:\s*\^\s*-?\d(?:\.\d+)?)?"
+_PRODUCT = re.compile(rf"\s*(?:1|{_FACTOR})(?:\s*\*\s*{_FACTOR})*(?:\s*/\s*{_FACTOR})*\s*")
 
 
 @cache
@@ -189,22 +215,64 @@ def parse_unit(text: str) -> Unit:
 
 
 def _compound(text: str) -> Unit:
-    names = re.findall(r"[^\W\d]\w*|°C|%", text)
-    _refuse_strangers(text, names)
+    """A unit made of listed units."""
+    _refuse_point(text)
+    _refuse_strangers(text)
+    _check_form(text)
     # a degree inside a compound unit is a difference
     plain = re.sub(r"\bdegC\b", "K", text).replace("^", "**").replace("%", "percent")
-    if not re.fullmatch(r"[\w\s*/().\-]+", plain) or len(text) > 60:
-        raise UnitError(f"'{text}' is not a unit", "join units with * and /, powers with ^, as in kJ/(kg*K)")
-    try:
-        one = _registry().Quantity(1.0, _registry().parse_units(plain)).to_base_units()
-    except Exception:
-        raise UnitError(f"'{text}' is not a unit", "join units with * and /, powers with ^, as in kJ/(kg*K)") from None
-    powers = {SYMBOLS[name]: Fraction(str(power)).limit_denominator(100) for name, power in one.dimensionality.items()}
+    registry = _registry()
+    one = registry.Quantity(1.0, registry.parse_units(plain)).to_base_units()
+    powers = {
+        SYMBOLS[name]: Fraction(float(str(power))).limit_denominator(100) for name, power in one.dimensionality.items()
+    }
     return Unit(text, float(one.magnitude), 0.0, Dimension.of(powers))
 
 
-def _refuse_strangers(text: str, names: list[str]) -> None:
+def _refuse_point(text: str) -> None:
+    """Refuse the mark of a scale anywhere but in a unit that stands alone."""
+    point = re.search(rf"\b({'|'.join(PRESSURES)})\s*\(([ag])\)", text)
+    if point:
+        alone = f"write {point[1]}({point[2]})"
+        hint = (
+            alone if point[0] == text else f"a point on a scale stands alone; inside a compound unit write {point[1]}"
+        )
+        raise UnitError(f"'{text}' is not a unit", hint)
+
+
+def _check_form(text: str) -> None:
+    """Refuse what could be read in two ways: units side by side, a product behind a solidus."""
+    if len(text) > LONGEST:
+        raise UnitError(f"a unit of {len(text)} characters", f"{LONGEST} is the most")
+    rest = text
+    while inner := re.search(r"\(([^()]*)\)", rest):
+        _check_product(inner[1], text)
+        rest = rest[: inner.start()] + "\0" + rest[inner.end() :]
+    _check_product(rest, text)
+
+
+def _check_product(part: str, text: str) -> None:
+    if _PRODUCT.fullmatch(part):
+        return
+    if _plain(text) != text:
+        raise UnitError(f"'{text}' can be read in two ways", f"write {_plain(text)}")
+    raise UnitError(f"'{text}' is not a unit", "join units with * and /, powers with ^, as in kJ/(kg*K)")
+
+
+def _plain(text: str) -> str:
+    """A unit as it is written here: plain letters, ^ for powers, a product behind a solidus in parentheses."""
+    plain = text.translate(LETTERS).replace("**", "^")
+    behind = re.fullmatch(r"([^/]+)/\s*(\w+)\s*[*\s]\s*(\w+)", plain)
+    return f"{behind[1].strip()}/({behind[2]}*{behind[3]})" if behind else plain
+
+
+def _refuse_strangers(text: str) -> None:
     """Refuse names that are not on the list, with the cure where it is known."""
+    if text.translate(LETTERS) != text or "**" in text:
+        raise UnitError(f"'{text}' is not a unit", f"write {_plain(text)}")
+    if text in CURES and text != "degF":
+        raise UnitError(f"'{text}' is not a unit known here", CURES[text])
+    names = re.findall(r"°?[^\W\d]\w*|%", text)
     if not names:
         raise UnitError(f"'{text}' is not a unit", "write a unit such as m^3/h, kW, degC or %")
     for name in names:
@@ -218,9 +286,12 @@ def _refuse_strangers(text: str, names: list[str]) -> None:
 
 
 def _cure(name: str) -> str:
+    scale = re.fullmatch(rf"({'|'.join(PRESSURES)})_?([ag])", name)
+    if scale:
+        return f"write {scale[1]}({scale[2]})"
     if name in CURES:
         return CURES[name]
-    close = difflib.get_close_matches(name, [*ALLOWED, *POINTS], n=3, cutoff=0.5)
+    close = difflib.get_close_matches(name, [*ALLOWED, "degC", "%"], n=3, cutoff=0.5)
     return (
         "did you mean " + " or ".join(close) + "?"
         if close

@@ -42,7 +42,9 @@ def _panels(
         if not having:
             continue
         unit = next(iter(having.values())).units[name]
-        curves = [Curve(strategy, one.time / scale, _shown(one.columns[name], unit)) for strategy, one in having.items()]
+        curves = [
+            Curve(strategy, one.time / scale, _shown(one.columns[name], unit)) for strategy, one in having.items()
+        ]
         if all((curve.y == curves[0].y).all() for curve in curves if curve.y.shape == curves[0].y.shape):
             curves = [Curve("all", curves[0].x, curves[0].y)]
         panels.append(Panel(f"{name} [{unit.text}]", tuple(curves), _levels(name, unit, verdicts)))
@@ -54,7 +56,12 @@ def _levels(name: str, unit: Unit, verdicts: Mapping[str, StrategyVerdict]) -> t
     rules = next(iter(verdicts.values())).run.scenario.accept
     found = []
     for rule in rules:
-        if rule.signal == name and rule.kind in ("max", "min") and rule.limit is not None and rule.limit.unit is not None:
+        if (
+            rule.signal == name
+            and rule.kind in ("max", "min")
+            and rule.limit is not None
+            and rule.limit.unit is not None
+        ):
             found.append((rule.kind, from_si(to_si(rule.limit.value, rule.limit.unit), unit)))
     return tuple(found)
 

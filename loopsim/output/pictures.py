@@ -40,7 +40,15 @@ def _panel(axes: Axes, panel: Panel) -> None:
     for number, curve in enumerate(panel.curves):
         colour, style = PENS[number % len(PENS)]
         shape = "steps-post" if curve.step else "default"
-        axes.plot(curve.x, curve.y, style if not curve.dashed else ":", color=colour, lw=1.2, label=curve.name, drawstyle=shape)
+        axes.plot(
+            curve.x,
+            curve.y,
+            style if not curve.dashed else ":",
+            color=colour,
+            lw=1.2,
+            label=curve.name,
+            drawstyle=shape,
+        )
     for name, level in panel.levels:
         axes.axhline(level, color="#999999", lw=0.8, dashes=(6, 3))
         axes.annotate(name, (1.0, level), xycoords=("axes fraction", "data"), xytext=(-3, 2), textcoords="offset points",

@@ -26,7 +26,10 @@ def _table(table: Table, width: int, colour: bool) -> str:
     if table.rows:
         widths = _widths(table, width)
         if any(table.heads):
-            lines += [_row([Cell(head) for head in table.heads], widths, False), "-" * min(sum(widths) + 3 * len(widths) - 3, width)]
+            lines += [
+                _row([Cell(head) for head in table.heads], widths, False),
+                "-" * min(sum(widths) + 3 * len(widths) - 3, width),
+            ]
         lines += [_row(list(row), widths, colour) for row in table.rows]
     for note in table.notes:
         lines += textwrap.wrap(note, width, initial_indent="* ", subsequent_indent="  ")

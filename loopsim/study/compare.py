@@ -38,9 +38,7 @@ class Comparison:
     reasons: tuple[str, ...]
 
 
-def compare(
-    scenarios: Mapping[str, Mapping[str, StrategyVerdict]], structures: Mapping[str, Structure]
-) -> Comparison:
+def compare(scenarios: Mapping[str, Mapping[str, StrategyVerdict]], structures: Mapping[str, Structure]) -> Comparison:
     """The winner over all scenarios: passes most rules, none failed first; then the one with most headroom left.
 
     `scenarios`: scenario -> strategy -> verdict. Headroom is the least share of a limit that is left in any rule.

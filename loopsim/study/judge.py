@@ -60,7 +60,9 @@ def _finding(run: Run, rule: Rule) -> Finding:
         return Finding(None, reason=reason)
     course = course_of(trends.pieces, rule.signal).within(begin, end)
     unit = trends.units.get(rule.signal, Unit("SI", 1.0, 0.0, PERCENT.dimension))
-    return KINDS[rule.kind](Measured(rule, run, course, _difference(run, rule, course, begin, end, unit), begin, end, unit))
+    return KINDS[rule.kind](
+        Measured(rule, run, course, _difference(run, rule, course, begin, end, unit), begin, end, unit)
+    )
 
 
 def _difference(run: Run, rule: Rule, course: Course, begin: float, end: float, unit: Unit) -> Course | None:

@@ -87,7 +87,9 @@ def _beyond(measured: Measured, way: float) -> Finding:
     limit = measured.limit()
     step = _last_step(measured)
     if step is None:
-        return Finding(None, None, limit, PERCENT, None, "no step of a set point that reaches the signal comes before it")
+        return Finding(
+            None, None, limit, PERCENT, None, "no step of a set point that reaches the signal comes before it"
+        )
     before, after = step
     size = after - before
     if size == 0:
@@ -135,7 +137,9 @@ def deviation(measured: Measured) -> Finding:
 
 def reversals(measured: Measured) -> Finding:
     """How often the signal turns round; swings inside `band` (else a thousandth of its unit) are not counted."""
-    dead_zone = _band(measured, 0.1 * measured.unit.factor if measured.unit.text == "%" else 1e-3 * measured.unit.factor)
+    dead_zone = _band(
+        measured, 0.1 * measured.unit.factor if measured.unit.text == "%" else 1e-3 * measured.unit.factor
+    )
     value = float(measured.course.reversals(dead_zone))
     assert measured.rule.limit is not None
     return Finding(value <= measured.rule.limit.value, value, measured.rule.limit.value, COUNT)

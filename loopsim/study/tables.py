@@ -125,7 +125,9 @@ def strategy_json(verdict: StrategyVerdict, trend: str | None) -> dict[str, Any]
         "metrics": {tag: dict(figures) for tag, figures in verdict.metrics.items()},
         "status": {"code": status.code, "sentence": status.sentence} if status is not None else None,
         "failure": verdict.run.failure or None,
-        "log": [{"time_s": one.time, "text": one.text} for one in (verdict.run.trends.log if verdict.run.trends else ())],
+        "log": [
+            {"time_s": one.time, "text": one.text} for one in (verdict.run.trends.log if verdict.run.trends else ())
+        ],
         "trend": trend,
     }
 
@@ -133,7 +135,9 @@ def strategy_json(verdict: StrategyVerdict, trend: str | None) -> dict[str, Any]
 def _rule_json(one: RuleVerdict) -> dict[str, Any]:
     finding = one.finding
     unit = finding.unit or parse_unit("dimensionless")
-    convert = [None if finite(value) is None else from_si(value or 0.0, unit) for value in (finding.value, finding.limit)]
+    convert = [
+        None if finite(value) is None else from_si(value or 0.0, unit) for value in (finding.value, finding.limit)
+    ]
     found: dict[str, Any] = {
         "rule": one.rule.text,
         "verdict": one.verdict,

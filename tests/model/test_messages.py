@@ -62,7 +62,9 @@ def told(folder: Path) -> str:
     return str(caught.value)
 
 
-@pytest.mark.parametrize(("plant", "strategy", "expected"), [case[1:] for case in CASES], ids=[case[0] for case in CASES])
+@pytest.mark.parametrize(
+    ("plant", "strategy", "expected"), [case[1:] for case in CASES], ids=[case[0] for case in CASES]
+)
 def test_each_mistake_is_told(write: Write, plant: str, strategy: str, expected: str) -> None:
     """The sentence, a place in a file, and nothing about what follows from it."""
     text = told(write({"plant.yaml": plant, "loop.yaml": strategy}))
@@ -93,7 +95,9 @@ def test_the_order_of_strategies_changes_nothing(write: Write) -> None:
 
 def test_out_of_reach_names_the_actuator_and_the_best(write: Write) -> None:
     """Source: energy balance by hand: 200 kW heat 3 m^3/h of water by 57.5 K, so that 90 degC needs 135.6 %."""
-    folder = write({"plant.yaml": GOOD.replace("[0 degC, 100", "[0 degC, 120"), "loop.yaml": LOOP.replace("55 degC", "90 degC")})
+    folder = write(
+        {"plant.yaml": GOOD.replace("[0 degC, 100", "[0 degC, 120"), "loop.yaml": LOOP.replace("55 degC", "90 degC")}
+    )
     (found,) = source(folder, "loop").rested().unreached
     rise = 200e3 / (998 * 4182 * 3 / 3600)
     assert found.needed == pytest.approx((90 - 12) / rise, rel=1e-6)
@@ -103,6 +107,8 @@ def test_out_of_reach_names_the_actuator_and_the_best(write: Write) -> None:
 
 def test_no_rest_is_said(write: Write) -> None:
     """A tank that takes in more than leaves has no steady state, and the state that moves is named."""
-    plant = "plant: filling\nblocks:\n  tank: {use: filling_tank, A: 1 m^2, q_in: 3 m^3/h, q_out: 2 m^3/h, T_in: 20 degC}\n"
+    plant = (
+        "plant: filling\nblocks:\n  tank: {use: filling_tank, A: 1 m^2, q_in: 3 m^3/h, q_out: 2 m^3/h, T_in: 20 degC}\n"
+    )
     with pytest.raises(ComputationError, match=r"'tank\.V' still moves"):
         source(write({"plant.yaml": plant})).rested()

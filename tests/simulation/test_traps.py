@@ -24,7 +24,14 @@ wires:
 
 def controller(**settings: str) -> str:
     """A strategy that controls the lag; settings are laid over the defaults."""
-    defaults = {"action": "reverse", "range": "[0 %, 100 %]", "gain": "3", "integral": "60 s", "scan": "0.5 s", "sp": "40 %"}
+    defaults = {
+        "action": "reverse",
+        "range": "[0 %, 100 %]",
+        "gain": "3",
+        "integral": "60 s",
+        "scan": "0.5 s",
+        "sp": "40 %",
+    }
     lines = "\n".join(f"    {key}: {value}" for key, value in {**defaults, **settings}.items() if value)
     return f"strategy: feedback\nblocks:\n  C-1:\n    use: pid\n{lines}\nwires:\n  - dead.y -> C-1.pv\n  - C-1.out -> push.u.1\n"
 
@@ -128,7 +135,9 @@ def test_gain_change_is_bumpless(write: Write) -> None:
         {
             "plant.yaml": LAG,
             "feedback.yaml": controller(),
-            "scenario.yaml": scenario("at: 30 s, step: C-1.sp, by: 10 %", "at: 32 s, step: C-1.gain, to: 5", lasts="60 s"),
+            "scenario.yaml": scenario(
+                "at: 30 s, step: C-1.sp, by: 10 %", "at: 32 s, step: C-1.gain, to: 5", lasts="60 s"
+            ),
         }
     )
     trends = trends_of(folder)
@@ -145,7 +154,9 @@ def test_one_scan_pulse_late_in_a_long_run_is_not_missed(write: Write) -> None:
             {
                 "plant.yaml": LAG,
                 "feedback.yaml": controller(),
-                "scenario.yaml": scenario("at: 3600.1 s, pulse: load, by: 20 %, lasts: 0.5 s", lasts="70 min", every=every),
+                "scenario.yaml": scenario(
+                    "at: 3600.1 s, pulse: load, by: 20 %, lasts: 0.5 s", lasts="70 min", every=every
+                ),
             }
         )
         result = run_of(folder)
@@ -157,7 +168,9 @@ def test_one_scan_pulse_late_in_a_long_run_is_not_missed(write: Write) -> None:
 
 def test_controller_without_integral_leaves_an_offset(write: Write) -> None:
     """P control with its bias: offset = (sp - bias)/(1 + Kc), source: algebra."""
-    folder = write({"plant.yaml": LAG, "feedback.yaml": controller(integral="", bias="20 %"), "scenario.yaml": scenario()})
+    folder = write(
+        {"plant.yaml": LAG, "feedback.yaml": controller(integral="", bias="20 %"), "scenario.yaml": scenario()}
+    )
     measured = trends_of(folder).columns["lag.y"][0]
     assert 0.4 - measured == pytest.approx((0.4 - 0.2) / (1 + 3.0), abs=1e-9)
 
