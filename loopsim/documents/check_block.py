@@ -106,16 +106,9 @@ class _Check:
     def _shown(self) -> set[str]:
         """What an output without a formula can show."""
         block = self.block
-        entries = (
-            *block.states,
-            *block.memory,
-            *block.let,
-            *block.scan,
-            *block.solve,
-            *block.inputs,
-            *block.parameters,
-        )
-        return {entry.key.name for entry in entries}
+        found = {one.key.name for one in block.states + block.memory} | {one.key.name for one in block.solve}
+        found |= {one.key.name for one in block.let + block.scan}
+        return found | {one.key.name for one in block.inputs} | {one.key.name for one in block.parameters}
 
     def _input(self, one: Input) -> None:
         if one.default is not None:

@@ -45,8 +45,9 @@ class Dimension:
             return "dimensionless"
         if self in NAMED:
             return NAMED[self]
-        above = [_factor(name, power) for name, power in self.powers if power > 0]
-        below = [_factor(name, -power) for name, power in self.powers if power < 0]
+        order = sorted(self.powers, key=lambda one: BASES.index(one[0]) if one[0] in BASES else len(BASES))
+        above = [_factor(name, power) for name, power in order if power > 0]
+        below = [_factor(name, -power) for name, power in order if power < 0]
         top, bottom = "*".join(above) or "1", "*".join(below)
         if not below:
             return top
