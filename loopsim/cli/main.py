@@ -76,7 +76,7 @@ def status_of(arguments: list[str] | None = None) -> int:
 
 
 def _told(error: Exception, as_json: bool) -> int:
-    """The status of an error, after it has been told: located problems as they are, anything else as a fault of ours."""
+    """The status of an error after it has been told: located problems, or a fault of ours."""
     from loopsim.errors import ComputationError, LoopsimError
 
     if not isinstance(error, LoopsimError):

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
 from loopsim.api import RunReport
 from loopsim.output.figures import run_figure
@@ -22,6 +23,7 @@ def write_run(report: RunReport, folder: Path) -> list[Path]:
             if verdict.run.trends is not None:
                 name = f"{strategy}.csv" if single else f"{scenario}.{strategy}.csv"
                 write_csv(verdict.run.trends, folder / name, verdict.run.air_pressure)
+                _named(report, scenario)["strategies"][strategy]["trend"] = name
                 written.append(folder / name)
         figure = run_figure(scenario, verdicts)
         if figure is not None:
@@ -30,3 +32,10 @@ def write_run(report: RunReport, folder: Path) -> list[Path]:
         (folder / name).write_text(text + "\n" if name.endswith("json") else text, encoding="utf-8")
         written.append(folder / name)
     return written
+
+
+def _named(report: RunReport, scenario: str) -> dict[str, Any]:
+    """The part of the JSON that speaks of a scenario."""
+    parts = report.json.get("scenarios", [report.json])
+    found: dict[str, Any] = next(one for one in parts if one["scenario"] == scenario)
+    return found

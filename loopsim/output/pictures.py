@@ -31,8 +31,12 @@ def write_pictures(figure: Figure, stem: Path) -> list[Path]:
         axes[-1].set_xlabel(figure.x_label)
         drawing.suptitle(figure.title, x=0.01, ha="left", fontsize=11)
         png, svg = stem.with_suffix(".png"), stem.with_suffix(".svg")
-        FigureCanvasAgg(drawing).print_png(png, metadata={"Software": None})
-        FigureCanvasSVG(drawing).print_svg(svg, metadata={"Date": None, "Creator": None})
+        FigureCanvasAgg(drawing).print_png(  # type: ignore[no-untyped-call]
+            png, metadata={"Software": None}
+        )
+        FigureCanvasSVG(drawing).print_svg(  # type: ignore[no-untyped-call]
+            svg, metadata={"Date": None, "Creator": None}
+        )
     return [png, svg]
 
 

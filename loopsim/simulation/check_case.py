@@ -80,7 +80,7 @@ def _refuse_other_kind(check: Check, dimension: Dimension, point: bool = False) 
     """The value expected must be of the kind of what is asked for."""
     unit = _unit(check)
     if unit.dimension != dimension or unit.point != point:
-        wanted = "a point on a scale" if point else f"a unit of {dimension}"
+        wanted = "a point on a scale" if point else dimension.describe()
         raise fail(f"{check.expected.text} where {wanted} is meant", check.expected.where)
 
 

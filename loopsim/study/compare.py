@@ -93,7 +93,7 @@ def _disturbance_reasons(
 
 
 def where_it_enters(structure: Structure, target: str) -> str:
-    """How a strategy's measurements see a disturbance: fed forward, inside an inner loop, or only at the end; '' if none."""
+    """How a strategy's measurements see a disturbance: fed forward, in an inner loop, or at the end; '' if none."""
     graph, controllers = structure.graph, structure.controllers
     if target not in graph or any(target == one.sp for one in controllers.values()):
         return ""

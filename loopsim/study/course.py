@@ -145,9 +145,7 @@ class Course:
         """How often the direction of movement changes, swings up to `dead_zone` [SI] not counted."""
         count, direction, extreme = 0, 0, None
         for value in self.path().tolist():
-            if extreme is None:
-                extreme = value
-            elif direction * (value - extreme) >= 0 and direction:
+            if extreme is None or (direction * (value - extreme) >= 0 and direction):
                 extreme = value
             elif abs(value - extreme) > dead_zone:
                 count += int(direction != 0)

@@ -1,7 +1,7 @@
 """Kinds of rule: each measures a run and says whether it passed.
 
-To add a kind: write one function that takes a `Measured` and gives a `Finding`, put it into `KINDS`, and name its key in
-`documents/rules.py`. On the limit is passed (rounding of one part in 10^9 is on the limit).
+To add a kind: write one function that takes a `Measured` and gives a `Finding`, put it into `KINDS`, and describe its
+key in `documents/shapes.py`. On the limit is passed (rounding of one part in 10^9 is on the limit).
 """
 
 from __future__ import annotations

@@ -13,7 +13,7 @@ from loopsim.results import Trends
 
 @dataclass(frozen=True, slots=True)
 class Happening:
-    """Something that an event did in one run: when [s], to what (values before and after, SI), and what depends on it."""
+    """Something that an event did in one run: when [s], to what (values before and after, SI), what depends on it."""
 
     time: float
     kind: str
