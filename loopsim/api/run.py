@@ -9,70 +9,87 @@ from pathlib import Path
 from typing import Any
 
 from loopsim import __version__
-from loopsim.documents.types import Rule, Scenario
-from loopsim.errors import ComputationError, Problems, fail, nearest
-from loopsim.language.tree import Name
-from loopsim.language.units import difference_of
+from loopsim.documents.types import Scenario
+from loopsim.errors import ComputationError, Problems, fail
+from loopsim.language.units import Unit
 from loopsim.model.choice import Source, scenario_sources
-from loopsim.model.graph import influences, reached_from
-from loopsim.model.types import Model
 from loopsim.results import Table, Trends
 from loopsim.simulation.case import Case, case_of, run_case
-from loopsim.simulation.run import RunResult, resolve
-from loopsim.study.compare import Comparison, ControllerView, Structure, compare
+from loopsim.study.checks import check_rules
+from loopsim.study.compare import compare
+from loopsim.study.export import comparison_json, to_json
 from loopsim.study.judge import judge
-from loopsim.study.tables import comparison_table, metrics_table, rule_table, strategy_json
-from loopsim.study.types import Happening, Loop, Run, StrategyVerdict
+from loopsim.study.observe import names_to_judge, run_of
+from loopsim.study.tables import comparison_table, metrics_table, verdict_table
+from loopsim.study.types import FAILED, NOT_JUDGED, PASSED, Comparison, Judged, Run, not_run
+from loopsim.study.windows import seconds
+
+CAUTION = "design and training aid; not a safety system and no part of one"
+
+
+@dataclass(frozen=True, slots=True)
+class Judgement:
+    """One scenario, judged: its strategies in order, and a name that follows from its files."""
+
+    scenario: Scenario
+    run_id: str
+    strategies: tuple[Judged, ...]
 
 
 @dataclass(frozen=True, slots=True)
 class RunReport:
-    """What `run` gives for one or several scenarios."""
+    """What `run` gives for one or several scenarios; `status` is the exit status of the command."""
 
-    tables: tuple[Table, ...]
-    json: dict[str, Any]
-    verdicts: Mapping[str, Mapping[str, StrategyVerdict]]
-    comparison: Comparison
+    judgements: tuple[Judgement, ...]
+    comparison: Comparison | None
     status: int
-    notes: tuple[str, ...] = ()
+
+    def tables(self) -> list[Table]:
+        """Verdicts and figures of each scenario, then the comparison."""
+        found = [table(one.strategies) for one in self.judgements for table in (verdict_table, metrics_table)]
+        return [*found, comparison_table(self.comparison)] if self.comparison is not None else found
+
+    def json(self, trends: Mapping[str, Mapping[str, str]] | None = None) -> dict[str, Any]:
+        """The JSON document; `trends`: scenario -> strategy -> name of the file with its trend."""
+        files = trends or {}
+        documents = [_document(one, files.get(one.scenario.name, {})) for one in self.judgements]
+        whole: dict[str, Any] = documents[0] if len(documents) == 1 else {"scenarios": documents}
+        if self.comparison is not None:
+            whole["comparison"] = comparison_json(self.comparison)
+        return {**whole, "caution": CAUTION}
 
 
-# ---------------------------------------------------------------- run
+def _document(one: Judgement, trends: Mapping[str, str]) -> dict[str, Any]:
+    document = to_json(one.run_id, one.strategies, trends)
+    return {**document, "version": __version__, "seed": one.scenario.seed}
+
+
 def run(paths: Sequence[Path], strategy: str = "", point: str = "") -> RunReport:
-    """Run and judge every strategy of the scenarios.
+    """Run and judge every strategy of the scenarios (files, or folders that hold them).
 
     Raises `InputError`; a strategy that cannot be computed is told in its column, and the others go on.
     """
-    verdicts: dict[str, dict[str, StrategyVerdict]] = {}
-    structures: dict[str, Structure] = {}
-    reports: list[dict[str, Any]] = []
-    tables, computed = list[Table](), True
+    judgements = []
     for path in scenario_files(paths):
         scenario, sources = scenario_sources(path, strategy)
-        found = _run_scenario(scenario, sources, point, structures)
-        verdicts[scenario.name] = found
-        tables += [rule_table(scenario.name, found), metrics_table(scenario.name, found)]
-        reports.append(_scenario_json(scenario, found, run_id(path, scenario)))
-        computed = computed and all(_computed(one) for one in found.values())
-    comparison = compare(verdicts, structures)
-    if comparison.sentence:
-        tables.append(comparison_table(comparison))
-    json: dict[str, Any] = reports[0] if len(reports) == 1 else {"scenarios": reports}
-    json["comparison"] = {"winner": comparison.winner or None, "sentence": comparison.sentence,
-                          "reasons": list(comparison.reasons)}  # fmt: skip
-    passed = all(_must_pass(one) for one in verdicts.values())
-    return RunReport(tuple(tables), json, verdicts, comparison, 3 if not computed else 0 if passed else 1)
+        judgements.append(Judgement(scenario, run_id(path, scenario), _judged(scenario, sources, point)))
+    every = [one for judgement in judgements for one in judgement.strategies]
+    several = any(len(one.strategies) > 1 for one in judgements)
+    comparison = compare(every) if several and any(one.verdicts for one in every) else None
+    return RunReport(tuple(judgements), comparison, _status(judgements))
 
 
-def _computed(verdict: StrategyVerdict) -> bool:
-    trends = verdict.run.trends
-    return trends is not None and trends.status.code == "done"
-
-
-def _must_pass(found: Mapping[str, StrategyVerdict]) -> bool:
-    scenario = next(iter(found.values())).run.scenario
-    wanted = scenario.must_pass if scenario.must_pass is not None else tuple(found)
-    return all(found[name].verdict in ("passed", "not_judged") for name in wanted if name in found)
+def _status(judgements: Sequence[Judgement]) -> int:
+    """3 where a run could not be finished, 1 where a strategy that must pass did not, else 0."""
+    every = [one for judgement in judgements for one in judgement.strategies]
+    if any(one.run.trends.status.code != "done" for one in every):
+        return 3
+    for judgement in judgements:
+        wanted = judgement.scenario.must_pass
+        for one in judgement.strategies:
+            if (wanted is None or one.run.strategy in wanted) and one.verdict not in (PASSED, NOT_JUDGED):
+                return 1
+    return 0
 
 
 def scenario_files(paths: Sequence[Path]) -> list[Path]:
@@ -89,108 +106,46 @@ def scenario_files(paths: Sequence[Path]) -> list[Path]:
     return found
 
 
-def _run_scenario(
-    scenario: Scenario, sources: Mapping[str, Source], point: str, structures: dict[str, Structure]
-) -> dict[str, StrategyVerdict]:
+def _judged(scenario: Scenario, sources: Mapping[str, Source], point: str) -> tuple[Judged, ...]:
     problems, cases, failures = Problems(), dict[str, Case](), dict[str, str]()
     for name, source in sources.items():
         with problems.collecting():
             try:
                 cases[name] = case_of(name, scenario, source, point)
             except ComputationError as error:
-                failures[name] = error.problems[0].what + "; " + error.problems[0].hint
+                failures[name] = f"{error.problems[0].what}; {error.problems[0].hint}"
     problems.raise_if_any()
-    _check_names(scenario, cases)
-    found = {}
-    for name in sources:
-        if name in failures:
-            found[name] = judge(Run(name, scenario, None, failure=failures[name]))
-            continue
-        case = cases[name]
-        structures.setdefault(name, structure_of(case.model))
-        found[name] = judge(_judgeable(case, run_case(case, _judged_names(case))))
-    return found
-
-
-def _judged_names(case: Case) -> list[str]:
-    """Signals that rules and figures look at."""
-    rules = case.scenario.accept
-    names = [rule.signal for rule in rules] + [rule.of for rule in rules if isinstance(rule.of, str)]
-    for one in loops_of(case.model):
-        names += [one.pv, one.sp, one.out]
-    return [name for name in dict.fromkeys(names) if name]
-
-
-def _check_names(scenario: Scenario, cases: Mapping[str, Case]) -> None:
-    """A signal, tag or target that no strategy has is a mistake."""
-    problems = Problems()
-    for rule in scenario.accept:
-        for name in _rule_names(rule):
-            if cases and not any(_knows(case.model, name) for case in cases.values()):
-                known = {one for case in cases.values() for one in case.model.signals}
-                problems.add(f"no strategy has a signal '{name}'", rule.where, nearest(name, known))
-    problems.raise_if_any()
-
-
-def _rule_names(rule: Rule) -> list[str]:
-    names = [rule.signal, rule.of if isinstance(rule.of, str) else "", rule.loop]
-    return [name for name in names if name]
-
-
-def _knows(model: Model, name: str) -> bool:
-    return resolve(model, name) is not None or any(one.tag == name for one in model.controllers)
-
-
-def loops_of(model: Model) -> tuple[Loop, ...]:
-    """The controllers of a model as the judging sees them."""
-    found = []
-    for one in model.controllers:
-        unit = model.signals[one.sp].unit if one.sp in model.signals else None
-        ends = [model.slots.get(f"{one.tag}.range.{end}") for end in ("low", "high")]
-        if unit is not None and ends[0] is not None and ends[1] is not None:
-            found.append(Loop(one.tag, one.pv, one.sp, one.out, ends[1].value - ends[0].value, difference_of(unit)))
-    return tuple(found)
-
-
-def _judgeable(case: Case, result: RunResult) -> Run:
-    graph, model = influences(case.model), case.model
-    happenings = []
-    for one in result.happened:
-        event = case.scenario.events[one.number]
-        reached = reached_from(graph, one.target)
-        names = {name for name in (*model.signals, *_judged_names(case)) if _reached(model, name, reached)}
-        text = result.trends.log[0].text if result.trends.log else event.kind
-        happenings.append(
-            Happening(one.time, event.kind, one.target, text, one.before, one.after, frozenset(names), event.where)
-        )
-    names = {name for rule in case.scenario.accept for name in _rule_names(rule)}
-    lacking = frozenset(name for name in names if not _knows(model, name))
-    return Run(
-        case.name, case.scenario, result.trends, tuple(happenings), loops_of(model), lacking, "", model.air_pressure
+    _check_rules(scenario, cases)
+    runs = [_run(name, scenario, cases, failures) for name in sources]
+    return tuple(
+        judge(scenario.name, one, scenario.accept)
+        if one.strategy in cases
+        else Judged(scenario.name, one, FAILED, (), ())
+        for one in runs
     )
 
 
-def _reached(model: Model, name: str, reached: frozenset[str]) -> bool:
-    return name in reached or resolve(model, name) in reached
+def _run(name: str, scenario: Scenario, cases: Mapping[str, Case], failures: Mapping[str, str]) -> Run:
+    if name in failures:
+        return not_run(name, failures[name], seconds(scenario.lasts))
+    case = cases[name]
+    return run_of(case, run_case(case, names_to_judge(case)))
 
 
-def structure_of(model: Model) -> Structure:
-    """The graph and controllers of a model, for the reasons of a comparison."""
-    controllers = {}
-    for one in model.controllers:
-        measured = _measured(model, one.pv)
-        controllers[one.tag] = ControllerView(one.pv, one.sp, one.out, one.ff, measured)
-    return Structure(influences(model), controllers)
-
-
-def _measured(model: Model, pv: str) -> tuple[str, ...]:
-    """The plant signals that go into the instrument behind a measurement."""
-    driver = model.assignments[pv].tree if pv in model.assignments else None
-    if not isinstance(driver, Name):
-        return ()
-    tag = model.assignments[driver.name].tag if driver.name in model.assignments else driver.name.rpartition(".")[0]
-    inputs = [one.tree for one in model.assignments.values() if one.tag == tag and isinstance(one.tree, Name)]
-    return tuple(sorted(tree.name for tree in inputs if not tree.name.startswith(f"{tag}.")))
+def _check_rules(scenario: Scenario, cases: Mapping[str, Case]) -> None:
+    """A rule that speaks of what no strategy has, or in a wrong unit, is told before anything runs."""
+    if not cases:
+        return
+    units: dict[str, Unit] = {}
+    loops = set[str]()
+    for case in cases.values():
+        units.update({name: signal.unit for name, signal in case.model.signals.items()})
+        for items in (case.model.states, case.model.memory, case.model.slots):
+            units.update({name: one.unit for name, one in items.items()})
+        loops |= {one.tag for one in case.model.controllers}
+    problems = Problems()
+    check_rules(scenario.accept, units, frozenset(loops), problems, next(iter(cases.values())).model.air_pressure)
+    problems.raise_if_any()
 
 
 def run_id(path: Path, scenario: Scenario) -> str:
@@ -202,14 +157,8 @@ def run_id(path: Path, scenario: Scenario) -> str:
     return digest.hexdigest()[:16]
 
 
-def _scenario_json(scenario: Scenario, found: Mapping[str, StrategyVerdict], identity: str) -> dict[str, Any]:
-    strategies = {name: strategy_json(one, None) for name, one in found.items()}
-    return {"scenario": scenario.name, "run_id": identity, "version": __version__, "seed": scenario.seed,
-            "strategies": strategies}  # fmt: skip
-
-
 def simulate(path: Path, strategy: str) -> Trends:
     """The trends of one strategy of a scenario."""
     scenario, sources = scenario_sources(path, strategy)
     case = case_of(strategy, scenario, sources[strategy])
-    return run_case(case, _judged_names(case)).trends
+    return run_case(case, names_to_judge(case)).trends

@@ -44,13 +44,13 @@ def command(
     del interpreted, cache
     begun = time.perf_counter()
     report = api.run(scenarios, strategy, points)
-    written = write_run(report, out) if out is not None else []
+    written = write_run(report, out) if out is not None else None
     if as_json:
-        click.echo(json_text(report.json))
+        click.echo(json_text(report.json(written)))
     else:
-        click.echo(render(report.tables))
-        for path in written:
-            click.echo(f"written: {path}")
+        click.echo(render(report.tables()))
+        if out is not None:
+            click.echo(f"Trends, pictures, results.json and results.xml are in {out}")
         click.echo(CAUTION)
     if timing:
         click.echo(f"{time.perf_counter() - begun:.2f} s", err=True)

@@ -3,39 +3,33 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Any
 
-from loopsim.api import RunReport
+from loopsim.api.run import RunReport
 from loopsim.output.figures import run_figure
 from loopsim.output.json_text import json_text
 from loopsim.output.junit import junit_text
 from loopsim.output.pictures import write_pictures
 from loopsim.output.trends import write_csv
+from loopsim.study.export import suites
 
 
-def write_run(report: RunReport, folder: Path) -> list[Path]:
-    """Write all files of a run and name them; the JSON speaks of the trends by file name."""
+def write_run(report: RunReport, folder: Path) -> dict[str, dict[str, str]]:
+    """Write all files of a run; gives the trends' file names by scenario and strategy."""
     folder.mkdir(parents=True, exist_ok=True)
-    written = []
-    single = len(report.verdicts) == 1
-    for scenario, verdicts in report.verdicts.items():
-        for strategy, verdict in verdicts.items():
-            if verdict.run.trends is not None:
-                name = f"{strategy}.csv" if single else f"{scenario}.{strategy}.csv"
-                write_csv(verdict.run.trends, folder / name, verdict.run.air_pressure)
-                _named(report, scenario)["strategies"][strategy]["trend"] = name
-                written.append(folder / name)
-        figure = run_figure(scenario, verdicts)
+    names: dict[str, dict[str, str]] = {}
+    single = len(report.judgements) == 1
+    for judgement in report.judgements:
+        scenario = judgement.scenario.name
+        names[scenario] = {}
+        for one in judgement.strategies:
+            if len(one.run.trends.time):
+                strategy = one.run.strategy
+                names[scenario][strategy] = f"{strategy}.csv" if single else f"{scenario}.{strategy}.csv"
+                write_csv(one.run.trends, folder / names[scenario][strategy], one.run.air_pressure)
+        figure = run_figure(judgement.scenario, judgement.strategies)
         if figure is not None:
-            written += write_pictures(figure, folder / scenario)
-    for name, text in (("results.json", json_text(report.json)), ("results.xml", junit_text(report.verdicts))):
-        (folder / name).write_text(text + "\n" if name.endswith("json") else text, encoding="utf-8")
-        written.append(folder / name)
-    return written
-
-
-def _named(report: RunReport, scenario: str) -> dict[str, Any]:
-    """The part of the JSON that speaks of a scenario."""
-    parts = report.json.get("scenarios", [report.json])
-    found: dict[str, Any] = next(one for one in parts if one["scenario"] == scenario)
-    return found
+            write_pictures(figure, folder / scenario)
+    every = [one for judgement in report.judgements for one in judgement.strategies]
+    (folder / "results.json").write_text(json_text(report.json(names)) + "\n", encoding="utf-8")
+    (folder / "results.xml").write_text(junit_text(suites(every)), encoding="utf-8")
+    return names

@@ -25,8 +25,10 @@ def write_pictures(figure: Figure, stem: Path) -> list[Path]:
     with matplotlib.rc_context({"svg.hashsalt": "loopsim", "font.size": 9.0, "svg.fonttype": "path"}):
         drawing = Drawing(figsize=(9.0, 0.9 + HEIGHT * len(figure.panels)), layout="constrained")
         axes = drawing.subplots(len(figure.panels), 1, sharex=True, squeeze=False)[:, 0]
+        names = dict.fromkeys(curve.name for panel in figure.panels for curve in panel.curves if not curve.dashed)
+        pens = {name: PENS[place % len(PENS)] for place, name in enumerate(sorted(names, key=lambda one: one == ""))}
         for panel, one in zip(figure.panels, axes, strict=True):
-            _panel(one, panel)
+            _panel(one, panel, pens)
         _marks(axes[0], figure)
         axes[-1].set_xlabel(figure.x_label)
         drawing.suptitle(figure.title, x=0.01, ha="left", fontsize=11)
@@ -40,29 +42,25 @@ def write_pictures(figure: Figure, stem: Path) -> list[Path]:
     return [png, svg]
 
 
-def _panel(axes: Axes, panel: Panel) -> None:
-    for number, curve in enumerate(panel.curves):
-        colour, style = PENS[number % len(PENS)]
+def _panel(axes: Axes, panel: Panel, pens: dict[str, tuple[str, str]]) -> None:
+    for curve in panel.curves:
+        if curve.dashed:
+            axes.plot(curve.x, curve.y, color="#222222", lw=0.8, ls=(0, (4, 3)), label=curve.name, zorder=1)
+            continue
+        colour, style = pens[curve.name]
         shape = "steps-post" if curve.step else "default"
-        axes.plot(
-            curve.x,
-            curve.y,
-            style if not curve.dashed else ":",
-            color=colour,
-            lw=1.2,
-            label=curve.name,
-            drawstyle=shape,
-        )
+        axes.plot(curve.x, curve.y, style, color=colour, lw=1.2, label=curve.name, drawstyle=shape)
     for name, level in panel.levels:
         axes.axhline(level, color="#999999", lw=0.8, dashes=(6, 3))
-        axes.annotate(name, (1.0, level), xycoords=("axes fraction", "data"), xytext=(-3, 2), textcoords="offset points",
-                      ha="right", fontsize=7, color="#666666")  # fmt: skip
+        style = {"xytext": (-3, 2), "textcoords": "offset points", "ha": "right", "fontsize": 7, "color": "#666666"}
+        axes.annotate(name, (1.0, level), xycoords=("axes fraction", "data"), **style)
     axes.set_ylabel(panel.y_label)
     axes.grid(True, lw=0.3, color="#dddddd")
     for side in ("top", "right"):
         axes.spines[side].set_visible(False)
     axes.margins(x=0)
-    axes.legend(loc="center left", bbox_to_anchor=(1.01, 0.5), frameon=False, fontsize=8, handlelength=1.8)
+    if any(curve.name for curve in panel.curves):
+        axes.legend(loc="center left", bbox_to_anchor=(1.01, 0.5), frameon=False, fontsize=8, handlelength=1.8)
 
 
 def _marks(axes: Axes, figure: Figure) -> None:

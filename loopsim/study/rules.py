@@ -1,7 +1,8 @@
-"""Kinds of rule: each measures a run and says whether it passed.
+"""The kinds of rule: each a pure function from a `Case` to a `Finding`.
 
-To add a kind: write one function that takes a `Measured` and gives a `Finding`, put it into `KINDS`, and describe its
-key in `documents/shapes.py`. On the limit is passed (rounding of one part in 10^9 is on the limit).
+To add a kind: write its function here, put it in `KINDS`, give it a shape in `documents.shapes.RULES` (its keys) and a
+line in `study.checks.SCALES` (the unit of its limit). A function measures over the window that it is given; whether the
+run covers the window, and whether anything disturbed the signal, is judged once for all kinds in `study.judge`.
 """
 
 from __future__ import annotations
@@ -11,189 +12,341 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 from loopsim.documents.types import Quantity, Rule
-from loopsim.language.units import PERCENT, Unit, difference_of, parse_unit, to_si
-from loopsim.study.course import Course
-from loopsim.study.types import Finding, Run
+from loopsim.language.units import Unit, difference_of, to_si
+from loopsim.study.path import (
+    Path,
+    Point,
+    Stay,
+    between,
+    farthest,
+    highest,
+    integral_of_size,
+    largest_jump,
+    lowest,
+    minus,
+    path_of,
+    reversals,
+    standard_deviation,
+    stays_above,
+    stays_outside,
+    steepest,
+    times,
+    travel,
+)
+from loopsim.study.types import LoopMargins, Run
+from loopsim.study.windows import Window, seconds, set_point_step
+from loopsim.study.words import clock, pair, shown
 
-ROUNDING = 1e-9
+ROUNDING = 1e-9  # relative: a value this near its limit is on it, and on the limit is passed
 
 
 @dataclass(frozen=True, slots=True)
-class Measured:
-    """A rule's signal over its window, the difference to its `of` where it has one, and what else a kind may need."""
+class Case:
+    """A rule over its window: the signal there, its error (signal minus `of`) where the rule has one, the limit [SI].
+
+    `unit` is what people read the signal in, `frame` the window. Neither path is empty.
+    """
 
     rule: Rule
     run: Run
-    course: Course
-    difference: Course | None
-    begin: float
-    end: float
-    unit: Unit
+    frame: Window
+    signal: Path
+    error: Path | None
+    limit: float
+    unit: Unit | None
 
-    def limit(self, difference: bool = False) -> float:
-        """The rule's limit in SI."""
-        assert self.rule.limit is not None
-        return si(self.rule.limit, self.run, difference_of(self.unit) if difference else self.unit)
+    def of_error(self) -> Path:
+        """The error; rules whose kind needs one have `of`, which reading the file has made sure."""
+        assert self.error is not None
+        return self.error
+
+    def shown(self, value: float) -> str:
+        """A difference on the signal's scale, in its unit."""
+        return shown(value, difference_of(self.unit) if self.unit else None, self.run.air_pressure)
 
 
-def si(quantity: Quantity, run: Run, unit: Unit) -> float:
-    """A written number in SI; a bare number counts in `unit`."""
-    return to_si(quantity.value, quantity.unit or unit, run.air_pressure)
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """What a kind found: the value and limit [SI], their unit, when [s], whether the rule is passed, its margin.
+
+    `passed` None: it cannot be judged, for the `reason`. `reason` is a sentence where the rule is not passed.
+    """
+
+    passed: bool | None
+    value: float | None
+    limit: float
+    unit: Unit | None
+    at: float | None = None
+    reason: str = ""
+    margin: float | None = None
 
 
 def on_or_under(value: float, limit: float) -> bool:
-    """Whether a value keeps below a limit."""
-    return value <= limit + ROUNDING * max(abs(limit), abs(value))
+    """Whether a size keeps below a limit, on the limit being passed: value <= limit * (1 + 1e-9)."""
+    return value <= limit * (1 + ROUNDING)
 
 
-def greatest(measured: Measured) -> Finding:
-    """`max`: the signal never goes above."""
-    value, when = measured.course.maximum()
-    limit = measured.limit()
-    return Finding(on_or_under(value, limit), value, limit, measured.unit, when)
+def share_left(value: float, limit: float) -> float:
+    """The margin of a size: 1 - value/limit; with a limit of 0 it is 1 for nothing at all, else minus infinity."""
+    if limit == 0:
+        return 1.0 if value == 0 else float("-inf")
+    return 1.0 - value / limit
 
 
-def least(measured: Measured) -> Finding:
-    """`min`: the signal never goes below."""
-    value, when = measured.course.minimum()
-    limit = measured.limit()
-    return Finding(on_or_under(-value, -limit), value, limit, measured.unit, when)
+# ---------------------------------------------------------------- levels
+def greatest(case: Case) -> Finding:
+    """`max`: never above the limit."""
+    return _level(case, highest(case.signal), 1.0)
 
 
-def within(measured: Measured) -> Finding:
-    """`within … of … by …`: inside a band from `by` after the window's start until its end."""
-    rule, limit = measured.rule, measured.limit(difference=True)
-    begin = measured.begin + (si(rule.by, measured.run, SECONDS) if rule.by is not None else 0.0)
-    unit = difference_of(measured.unit)
-    if begin > measured.end:
-        return Finding(None, None, limit, unit, None, "the run ends before the time by which the signal must be inside")
-    assert measured.difference is not None
-    part = measured.difference.within(begin, measured.end)
-    value, when = part.largest()
-    return Finding(on_or_under(abs(value), limit), value, limit, unit, when)
+def least(case: Case) -> Finding:
+    """`min`: never below the limit."""
+    return _level(case, lowest(case.signal), -1.0)
 
 
-def overshoot(measured: Measured) -> Finding:
-    """Per cent of the last set-point step beyond its end."""
-    return _beyond(measured, 1.0)
+def _level(case: Case, extreme: Point, way: float) -> Finding:
+    """The margin is the part of the way from the signal's first value of the run to the limit that was not gone.
+
+    Where the run starts on the wrong side of the limit, the signal's measuring range stands for that way, if known.
+    """
+    excess = way * (extreme.value - case.limit)
+    passed = excess <= ROUNDING * abs(case.limit)
+    pieces, name = case.run.trends.pieces, case.rule.signal
+    room = way * (case.limit - float(pieces.samples[0, 0, pieces.names.index(name)]))
+    room = room if room > ROUNDING * abs(case.limit) else case.run.spans.get(name) or 0.0
+    margin = -excess / room if room > 0 else None
+    unit = case.rule.limit.unit if case.rule.limit else None
+    value, limit = pair(extreme.value, case.limit, unit or case.unit, case.run.air_pressure)
+    limits = f"no {'more' if way > 0 else 'less'} than {limit} is allowed"
+    reason = "" if passed else f"{name} comes to {value} at {clock(extreme.at)}; {limits}"
+    return Finding(passed, extreme.value, case.limit, unit or case.unit, extreme.at, reason, margin)
 
 
-def undershoot(measured: Measured) -> Finding:
-    """Per cent of the last set-point step before its beginning: the inverse response."""
-    return _beyond(measured, -1.0)
+# ---------------------------------------------------------------- keeping to a set point
+def within(case: Case) -> Finding:
+    """`within … of … by …`: inside the band from `by` after the window's start until it ends.
+
+    With `dwell` it is enough to come inside by then and to stay for that long.
+    """
+    if case.rule.dwell is not None:
+        return _settled(case, seconds(case.rule.dwell))
+    return _inside(case, case.of_error())
 
 
-def _beyond(measured: Measured, way: float) -> Finding:
-    limit = measured.limit()
-    step = _last_step(measured)
-    if step is None:
-        return Finding(
-            None, None, limit, PERCENT, None, "no step of a set point that reaches the signal comes before it"
-        )
-    before, after = step
-    size = after - before
-    if size == 0:
-        return Finding(None, None, limit, PERCENT, None, "the step before it has no size")
-    edge = after if way > 0 else before
-    share = Course(measured.course.start, measured.course.length, way * (measured.course.samples - edge) / size)
-    value, when = share.maximum()
-    value = max(value, 0.0)
-    return Finding(on_or_under(value, limit), value, limit, PERCENT, when)
+def _inside(case: Case, error: Path) -> Finding:
+    worst = farthest(error)
+    passed = on_or_under(abs(worst.value), case.limit)
+    unit = case.rule.limit.unit if case.rule.limit else case.unit
+    value, limit = pair(abs(worst.value), case.limit, unit, case.run.air_pressure)
+    side = "above" if worst.value > 0 else "below"
+    reason = f"{case.rule.signal} is {value} {side} {of_text(case.rule)} at {clock(worst.at)}; {limit} is allowed"
+    margin = share_left(abs(worst.value), case.limit)
+    return Finding(passed, abs(worst.value), case.limit, unit, worst.at, "" if passed else reason, margin)
 
 
-def _last_step(measured: Measured) -> tuple[float, float] | None:
-    """The set-point step that a rule speaks of: the last one up to the window's start (or the first in it)."""
-    set_points = {loop.sp for loop in measured.run.loops}
-    steps = [
-        one
-        for one in measured.run.happenings
-        if one.kind == "step" and one.target in set_points and measured.rule.signal in one.reaches
-    ]
-    early = [one for one in steps if one.time <= measured.begin + 1e-9]
-    found = early[-1:] or steps[:1]
-    return (found[0].before, found[0].after) if found else None
+def _settled(case: Case, dwell: float) -> Finding:
+    """The first stay inside that is long enough, if it begins in time; else what the error is just after `by`."""
+    error, frame = case.of_error(), case.frame
+    end = min(float(error.ends()[-1]), frame.end)
+    outside = stays_outside(error, case.limit * (1 + ROUNDING))
+    for stay in _gaps(outside, frame.after, end):
+        if stay.begin <= frame.begin and stay.end - stay.begin >= dwell * (1 - ROUNDING):
+            return _inside(case, between(error, stay.begin, stay.begin + dwell))
+    judged = between(error, frame.begin, min(frame.begin + dwell, end), closing=True)
+    unit = case.rule.limit.unit if case.rule.limit else case.unit
+    if not len(judged):
+        return Finding(None, None, case.limit, unit, None, "the run ends before the signal must have settled")
+    finding = _inside(case, judged)
+    if finding.passed:  # what is known of the stay is inside, but too little of it is known
+        reason = f"less than {clock(dwell)} is left after the signal comes inside the band"
+        return Finding(None, finding.value, case.limit, finding.unit, finding.at, reason)
+    return finding
 
 
-def absolute_error(measured: Measured) -> Finding:
-    """`iae`: the integral of the absolute deviation."""
-    assert measured.difference is not None
-    value = measured.difference.absolute_integral()
-    limit = measured.limit(difference=True)
-    unit = measured.rule.limit.unit if measured.rule.limit else None
-    return Finding(on_or_under(value, limit), value, limit, unit)
+def _gaps(stays: tuple[Stay, ...], begin: float, end: float) -> list[Stay]:
+    """What lies between the stays, from `begin` to `end`."""
+    edges = [begin, *(edge for stay in stays for edge in (stay.begin, stay.end)), end]
+    return [Stay(low, high) for low, high in zip(edges[::2], edges[1::2], strict=True) if high > low]
 
 
-def travel(measured: Measured) -> Finding:
-    """The sum of all movements, through the play that `band` gives."""
-    value, limit = measured.course.travel(_band(measured, 0.0)), measured.limit(difference=True)
-    return Finding(on_or_under(value, limit), value, limit, difference_of(measured.unit))
+def of_text(rule: Rule) -> str:
+    """What a rule's error counts from, as written."""
+    return rule.of.text if isinstance(rule.of, Quantity) else rule.of or ""
 
 
-def deviation(measured: Measured) -> Finding:
-    """One sigma over the window."""
-    value, limit = measured.course.deviation(), measured.limit(difference=True)
-    return Finding(on_or_under(value, limit), value, limit, difference_of(measured.unit))
+def absolute_error(case: Case) -> Finding:
+    """`iae`: the integral of the absolute error."""
+    return _sum(case, integral_of_size(case.of_error()), "the absolute error adds up to {value}")
 
 
-def reversals(measured: Measured) -> Finding:
-    """How often the signal turns round; swings inside `band` (else a thousandth of its unit) are not counted."""
-    dead_zone = _band(
-        measured, 0.1 * measured.unit.factor if measured.unit.text == "%" else 1e-3 * measured.unit.factor
-    )
-    value = float(measured.course.reversals(dead_zone))
-    assert measured.rule.limit is not None
-    return Finding(value <= measured.rule.limit.value, value, measured.rule.limit.value, COUNT)
+def outside(case: Case) -> Finding:
+    """`outside`: time outside `band` of `of`."""
+    stays = stays_outside(case.of_error(), _band(case) * (1 + ROUNDING))
+    total = math.fsum(stay.end - stay.begin for stay in stays)
+    at = stays[-1].end if stays else None
+    return _sum(case, total, f"{case.rule.signal} is outside for {{value}}", at)
 
 
-def _band(measured: Measured, otherwise: float) -> float:
-    band = measured.rule.band
-    return si(band, measured.run, difference_of(measured.unit)) if band is not None else otherwise
+# ---------------------------------------------------------------- steps of the set point
+def overshoot(case: Case) -> Finding:
+    """`overshoot`: how far past the set point, per cent of its last step before `after` (or as a difference)."""
+    return _past(case, past_end=True)
 
 
-def rate(measured: Measured) -> Finding:
-    """The largest rate of change."""
-    value, when = measured.course.steepest()
-    assert measured.rule.limit is not None
-    limit = si(measured.rule.limit, measured.run, measured.unit)
-    return Finding(on_or_under(value, limit), value, limit, measured.rule.limit.unit, when)
+def undershoot(case: Case) -> Finding:
+    """`undershoot`: how far the wrong way from where the signal was at the step (inverse response), as `overshoot`."""
+    return _past(case, past_end=False)
 
 
-def outside(measured: Measured) -> Finding:
-    """Time outside a band round `of`."""
-    assert measured.rule.band is not None and measured.difference is not None
-    band = si(measured.rule.band, measured.run, difference_of(measured.unit))
-    value = measured.difference.time_outside(band)
-    assert measured.rule.limit is not None
-    limit = si(measured.rule.limit, measured.run, SECONDS)
-    return Finding(on_or_under(value, limit), value, limit, measured.rule.limit.unit or SECONDS)
+def _past(case: Case, past_end: bool) -> Finding:
+    rule, run = case.rule, case.run
+    assert rule.limit is not None
+    of = rule.of if isinstance(rule.of, str) else ""
+    step = set_point_step(run, rule.signal, of, rule, case.frame.after)
+    if step is None or step.set_point_from is None or step.set_point_to is None:
+        before = "in the run" if rule.after is None else f"up to {clock(case.frame.after)}"
+        return _open(case, f"no step of a set point {before} reaches {rule.signal}")
+    change = step.set_point_to - step.set_point_from
+    if abs(change) <= ROUNDING * max(abs(step.set_point_to), abs(step.set_point_from)):
+        return _open(case, f"the step of {step.target} at {clock(step.time)} has no size")
+    judged = between(case.signal, max(step.time, case.frame.begin), case.frame.end, case.frame.closing)
+    target = in_si(rule.of, run) if isinstance(rule.of, Quantity) else step.set_point_to
+    edge = target if past_end else value_at(run, rule.signal, step.time)
+    if not len(judged):
+        return _open(case, f"{rule.signal} has no values after the step at {clock(step.time)}")
+    way = math.copysign(1.0, change) * (1.0 if past_end else -1.0)
+    worst = highest(times(minus(judged, edge), way))
+    worst = Point(max(worst.value, 0.0), worst.at)
+    if not per_step(rule.limit):
+        return _amount(case, worst.value, rule.limit.unit, worst.at, _past_words(case, past_end))
+    return _amount(case, worst.value / abs(change), rule.limit.unit, worst.at, _past_words(case, past_end))
 
 
-def alarms(measured: Measured) -> Finding:
-    """How often an on/off signal comes on."""
-    path = measured.course.path()
-    value = float(((path[1:] > 0.5) & (path[:-1] <= 0.5)).sum() + (len(path) > 0 and path[0] > 0.5))
-    assert measured.rule.limit is not None
-    return Finding(value <= measured.rule.limit.value, value, measured.rule.limit.value, COUNT)
+def _past_words(case: Case, past_end: bool) -> str:
+    return f"{case.rule.signal} goes {{value}} {'past the set point' if past_end else 'the wrong way'} at {{at}}"
 
 
-SECONDS = parse_unit("s")
-COUNT = Unit("count", 1.0, 0.0, PERCENT.dimension)
-KINDS: dict[str, Callable[[Measured], Finding]] = {
+def in_si(quantity: Quantity, run: Run) -> float:
+    """A written place on a scale, or a bare number, in SI."""
+    return to_si(quantity.value, quantity.unit, run.air_pressure) if quantity.unit else quantity.value
+
+
+def per_step(limit: Quantity) -> bool:
+    """Whether a limit of overshoot is a share of the step, and not a difference of the signal."""
+    return limit.unit is None or limit.unit.text in ("%", "dimensionless")
+
+
+def value_at(run: Run, signal: str, time: float) -> float:
+    """The signal just before an instant [s]; at the run's first instant the first value."""
+    whole = path_of(run.trends.pieces, signal)
+    earlier = between(whole, float(whole.start[0]), time)
+    return float(earlier.last()[-1]) if len(earlier) else float(whole.first()[0])
+
+
+# ---------------------------------------------------------------- movement
+def movement(case: Case) -> Finding:
+    """`travel`: the sum of all movements up and down, of something driven through a play of `band`."""
+    return _sum(case, travel(case.signal, _band(case)), f"{case.rule.signal} moves {{value}} in all")
+
+
+def deviation(case: Case) -> Finding:
+    """`deviation`: the standard deviation over time; it tells what noise does while nothing else happens."""
+    return _sum(case, standard_deviation(case.signal), f"{case.rule.signal} swings by {{value}} (one sigma)")
+
+
+def turns(case: Case) -> Finding:
+    """`reversals`: changes of direction, movements smaller than `band` not counted."""
+    count = float(reversals(case.signal, _band(case)))
+    return _sum(case, count, f"{case.rule.signal} changes direction {{value}} times")
+
+
+def _band(case: Case) -> float:
+    return size(case.rule.band, case.unit) if case.rule.band is not None else 0.0
+
+
+def rate(case: Case) -> Finding:
+    """`rate`: never faster than the limit, up or down; a jump is faster than any limit."""
+    fastest = steepest(case.signal)
+    if math.isinf(fastest.value):
+        jump = largest_jump(case.signal)
+        words = f"{case.rule.signal} jumps by {case.shown(jump.value)} at {clock(jump.at)}, which no rate describes"
+        unit = case.rule.limit.unit if case.rule.limit else None
+        return Finding(False, float("inf"), case.limit, unit, jump.at, words, float("-inf"))
+    return _sum(case, fastest.value, f"{case.rule.signal} changes by {{value}} at {{at}}", fastest.at)
+
+
+def alarms(case: Case) -> Finding:
+    """`alarms`: how many times an on/off signal is on; one that is on from the start counts."""
+    stays = stays_above(case.signal, 0.5)
+    at = stays[0].begin if stays else None
+    return _sum(case, float(len(stays)), f"{case.rule.signal} is on {{value}} times", at)
+
+
+# ---------------------------------------------------------------- findings
+def _sum(case: Case, value: float, words: str, at: float | None = None) -> Finding:
+    return _amount(case, value, case.rule.limit.unit if case.rule.limit else None, at, words)
+
+
+def _amount(case: Case, value: float, unit: Unit | None, at: float | None, words: str) -> Finding:
+    """A size against its limit; `words` say what it is where the limit is passed over."""
+    passed = on_or_under(value, case.limit)
+    told, limit = pair(value, case.limit, unit, case.run.air_pressure)
+    sentence = f"{words.format(value=told, at=clock(at) if at is not None else '')}; {limit} is allowed"
+    return Finding(passed, value, case.limit, unit, at, "" if passed else sentence, share_left(value, case.limit))
+
+
+def _open(case: Case, reason: str) -> Finding:
+    unit = case.rule.limit.unit if case.rule.limit else None
+    return Finding(None, None, case.limit, unit, None, reason)
+
+
+def size(quantity: Quantity, unit: Unit | None) -> float:
+    """A written difference in SI; a bare number counts in the signal's unit."""
+    given = quantity.unit or (difference_of(unit) if unit else None)
+    return quantity.value * (given.factor if given else 1.0)
+
+
+# ---------------------------------------------------------------- margins of a loop
+AT_LEAST = frozenset({"gain_margin", "phase_margin", "delay_margin"})
+
+
+def loop_margins(rule: Rule, known: LoopMargins | None) -> Finding:
+    """`loop:` with margins: all of them kept; the one with the least to spare gives value and limit."""
+    findings = [_one_margin(rule.loop, name, limit, known) for name, limit in rule.margins.items()]
+    for finding in findings:
+        if finding.passed is None:
+            return finding
+    return min(findings, key=lambda one: one.margin if one.margin is not None else float("-inf"))
+
+
+def _one_margin(loop: str, name: str, limit: Quantity, known: LoopMargins | None) -> Finding:
+    bound, title = size(limit, None), name.replace("_", " ")
+    if known is None:
+        return Finding(None, None, bound, limit.unit, None, "needs the linear side")
+    if not known.stable:
+        return Finding(False, None, bound, limit.unit, None, f"the closed loop of {loop} is not stable", float("-inf"))
+    if name not in known.values:
+        return Finding(None, None, bound, limit.unit, None, f"the {title} of {loop} is not known")
+    value = known.values[name]
+    least_wanted = name in AT_LEAST
+    passed = value >= bound * (1 - ROUNDING) if least_wanted else on_or_under(value, bound)
+    margin = share_left(bound, value) if least_wanted and value != 0 else share_left(value, bound)
+    told, wanted = pair(value, bound, limit.unit)
+    sentence = f"the {title} of {loop} is {told}; at {'least' if least_wanted else 'most'} {wanted} is wanted"
+    return Finding(passed, value, bound, limit.unit, None, "" if passed else sentence, margin)
+
+
+KINDS: dict[str, Callable[[Case], Finding]] = {
     "max": greatest,
     "min": least,
     "within": within,
     "overshoot": overshoot,
     "undershoot": undershoot,
     "iae": absolute_error,
-    "travel": travel,
+    "travel": movement,
     "deviation": deviation,
-    "reversals": reversals,
+    "reversals": turns,
     "rate": rate,
     "outside": outside,
     "alarms": alarms,
 }
-
-
-def finite(value: float | None) -> float | None:
-    """A number that can be printed, or None."""
-    return value if value is not None and math.isfinite(value) else None

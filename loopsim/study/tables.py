@@ -1,149 +1,160 @@
-"""Verdicts and comparisons as tables, JSON and test reports."""
+"""Judging as tables: verdicts, figures, comparison, a column for each strategy."""
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from typing import Any
+from collections.abc import Sequence
 
-from loopsim.language.units import from_si, parse_unit
 from loopsim.results import Cell, Table
-from loopsim.study.compare import Comparison
-from loopsim.study.rules import finite
-from loopsim.study.types import Finding, RuleVerdict, StrategyVerdict
+from loopsim.study.types import (
+    FAILED,
+    INCONCLUSIVE,
+    NOT_APPLICABLE,
+    PASSED,
+    Comparison,
+    Judged,
+    LoopMetrics,
+    Measure,
+    Verdict,
+)
+from loopsim.study.words import clock, rounded, shown
 
-TONES = {"passed": "good", "failed": "bad", "inconclusive": "open", "not_applicable": "plain", "not_judged": "plain"}
-FIGURES = {
-    "peak": "peak deviation",
-    "iae": "integral of |error|",
-    "time_outside_s": "time outside 2 % of span",
-    "settling_s": "settled after",
-    "overshoot": "overshoot of the step",
-    "undershoot": "undershoot of the step",
-    "travel": "output travel",
-    "reversals": "output reversals",
-}
-
-
-def rule_table(scenario: str, verdicts: Mapping[str, StrategyVerdict]) -> Table:
-    """A column for each strategy, a row for each rule: value against limit, when, verdict."""
-    names = list(verdicts)
-    first = next(iter(verdicts.values()))
-    rows = [[Cell(rule.text)] for rule in first.run.scenario.accept]
-    for verdict in verdicts.values():
-        for row, one in zip(rows, verdict.rules or [None] * len(rows), strict=True):
-            row.append(_rule_cell(one) if one is not None else Cell("no run", "bad"))
-    rows.append([Cell("together"), *(Cell(WORDS[one.verdict], TONES[one.verdict]) for one in verdicts.values())])
-    notes = [f"{name}: {one.run.failure}" for name, one in verdicts.items() if one.run.failure]
-    notes += list(dict.fromkeys(note for one in verdicts.values() for note in _reasons(one)))
-    return Table(scenario, ("rule", *names), tuple(tuple(row) for row in rows), tuple(notes))
+TONES = {PASSED: "good", FAILED: "bad", INCONCLUSIVE: "open"}
+DASH = Cell("–")
 
 
-WORDS = {
-    "passed": "PASSED",
-    "failed": "FAILED",
-    "inconclusive": "INCONCLUSIVE",
-    "not_applicable": "does not apply",
-    "not_judged": "not judged",
-}
+# ---------------------------------------------------------------- verdicts
+def verdict_table(judged: Sequence[Judged]) -> Table:
+    """The strategies of one scenario: a row for each rule with its limit; value, time and verdict for each strategy."""
+    first = judged[0]
+    rows = [
+        (Cell(rule.rule), Cell(_limit(judged, number)), *(_cell(one, one.verdicts[number]) for one in judged))
+        for number, rule in enumerate(first.verdicts)
+    ]
+    rows.append(
+        (Cell("all rules"), Cell(""), *(Cell(_spoken(one.verdict), TONES.get(one.verdict, "plain")) for one in judged))
+    )
+    heads = ("rule", "limit", *(one.run.strategy for one in judged))
+    return Table(first.scenario, heads, tuple(rows), tuple(_notes(judged)))
 
 
-def _rule_cell(one: RuleVerdict) -> Cell:
-    finding = one.finding
-    if finding.value is None:
-        return Cell(WORDS[one.verdict].lower(), TONES[one.verdict])
-    when = f" at {duration(finding.at)}" if finite(finding.at) is not None else ""
-    mark = {"passed": "ok", "failed": "FAILED"}.get(one.verdict, one.verdict)
-    return Cell(f"{shown(finding)}{when}  {mark}", TONES[one.verdict])
+def _limit(judged: Sequence[Judged], number: int) -> str:
+    """The limit of a rule, from the first strategy in which it applies."""
+    for one in judged:
+        verdict = one.verdicts[number]
+        if verdict.limit is not None:
+            return shown(verdict.limit, verdict.unit, one.run.air_pressure)
+    return ""
 
 
-def _reasons(verdict: StrategyVerdict) -> list[str]:
-    found = []
-    for one in verdict.rules:
-        if one.verdict == "inconclusive":
-            found.append(f"{verdict.run.strategy}: '{one.rule.text}' is inconclusive: {one.finding.reason}")
+def _cell(one: Judged, verdict: Verdict) -> Cell:
+    if verdict.verdict == NOT_APPLICABLE:
+        return Cell("does not apply")
+    words = []
+    if verdict.value is not None:
+        words.append("jumps" if verdict.value == float("inf") and verdict.kind == "rate" else _value(one, verdict))
+    if verdict.at is not None:
+        words.append(f"at {clock(verdict.at)}")
+    text = " ".join(words)
+    return Cell(f"{text}, {verdict.verdict}" if text else verdict.verdict, TONES.get(verdict.verdict, "plain"))
+
+
+def _value(one: Judged, verdict: Verdict) -> str:
+    assert verdict.value is not None
+    return shown(verdict.value, verdict.unit, one.run.air_pressure)
+
+
+def _spoken(verdict: str) -> str:
+    return verdict.replace("_", " ")
+
+
+def _notes(judged: Sequence[Judged]) -> list[str]:
+    """Why rules are not passed, what does not apply, how runs ended, what was assumed; each once."""
+    notes = []
+    for one in judged:
+        name = one.run.strategy
+        notes += [
+            f"{name}, '{each.rule}': {each.verdict.replace('_', ' ')}; {each.reason}"
+            for each in one.verdicts
+            if each.reason
+        ]
+        notes += [f"{name}: the event '{text}' does not apply" for text in one.run.skipped]
+        status = one.run.trends.status
+        if status.code != "done":
+            notes.append(f"{name}: the run stopped at {clock(status.time)}: {status.sentence}")
+    notes += [f"assumed: {text}" for one in judged for text in one.run.trends.assumed]
+    return list(dict.fromkeys(notes))
+
+
+# ---------------------------------------------------------------- figures
+def metrics_table(judged: Sequence[Judged]) -> Table:
+    """The strategies of one scenario: a row for each figure of each controlled signal that has a value in any."""
+    rows: dict[tuple[str, str, str], dict[str, Measure]] = {}
+    for one in judged:
+        for loop in one.metrics:
+            for event, measure in _measures(loop):
+                rows.setdefault((loop.tag, event, measure.name), {})[one.run.strategy] = measure
+    names = [one.run.strategy for one in judged]
+    shown_rows = {key: found for key, found in rows.items() if any(one.value is not None for one in found.values())}
+    cells = tuple(
+        (Cell(_row_title(*key)), *(_measure_cell(found.get(name)) for name in names))
+        for key, found in shown_rows.items()
+    )
+    notes = dict.fromkeys(
+        f"{name}, {_row_title(*key)}: {measure.reason}"
+        for key, found in shown_rows.items()
+        for name, measure in found.items()
+        if measure.value is None and measure.reason
+    )
+    return Table(f"{judged[0].scenario}: figures", ("figure", *names), cells, tuple(notes))
+
+
+def _measures(loop: LoopMetrics) -> list[tuple[str, Measure]]:
+    """Figures of the whole run, then of each event; a single event's deviation says nothing that the whole does not."""
+    found = [("", measure) for measure in loop.measures]
+    for event in loop.events:
+        found += [
+            (event.text, measure)
+            for measure in event.measures
+            if len(loop.events) > 1 or measure.name not in ("peak_deviation", "iae")
+        ]
     return found
 
 
-def shown(finding: Finding) -> str:
-    """A value in the rule's unit with four digits."""
-    assert finding.value is not None
-    if finding.unit is None:
-        return f"{finding.value:.4g}"
-    return f"{from_si(finding.value, finding.unit):.4g} {finding.unit.text}".removesuffix(" count")
+def _row_title(tag: str, event: str, name: str) -> str:
+    title = f"{tag} {name.replace('_', ' ')}"
+    return f"{title} after {event}" if event else title
 
 
-def duration(seconds: float | None) -> str:
-    """A time as people read it: 45 s, 12.5 min, 3.2 h."""
-    if seconds is None:
-        return "-"
-    if abs(seconds) < 100:
-        return f"{seconds:.3g} s"
-    return f"{seconds / 60:.3g} min" if abs(seconds) < 36000 else f"{seconds / 3600:.3g} h"
+def _measure_cell(measure: Measure | None) -> Cell:
+    if measure is None or measure.value is None:
+        return DASH
+    in_time = measure.unit is not None and measure.unit.text == "min"
+    text = clock(measure.value) if in_time else shown(measure.value, measure.unit)
+    timed = measure.at is not None and measure.name in ("peak_deviation", "overshoot", "undershoot")
+    return Cell(f"{text} at {clock(measure.at)}" if timed and measure.at is not None else text)
 
 
-def metrics_table(scenario: str, verdicts: Mapping[str, StrategyVerdict]) -> Table:
-    """A row for each figure of each loop, a column for each strategy."""
-    names = list(verdicts)
-    tags = list(dict.fromkeys(tag for one in verdicts.values() for tag in one.metrics))
-    rows = []
-    for tag in tags:
-        for figure, words in FIGURES.items():
-            cells = [_figure_cell(one, tag, figure) for one in verdicts.values()]
-            if any(cell.text != "-" for cell in cells):
-                rows.append((Cell(f"{tag}: {words}"), *cells))
-    return Table(f"{scenario}: figures of the loops", ("figure", *names), tuple(rows))
-
-
-def _figure_cell(verdict: StrategyVerdict, tag: str, figure: str) -> Cell:
-    value = verdict.metrics.get(tag, {}).get(figure)
-    if value is None:
-        return Cell("-")
-    loop = next(one for one in verdict.run.loops if one.tag == tag)
-    if figure in ("time_outside_s", "settling_s"):
-        return Cell(duration(value))
-    if figure in ("overshoot", "undershoot", "travel"):
-        return Cell(f"{100 * value:.3g} %")
-    if figure == "reversals":
-        return Cell(f"{value:.0f}")
-    size = value / loop.unit.factor
-    return Cell(f"{size:+.3g} {loop.unit.text}" if figure == "peak" else f"{size / 60:.3g} {loop.unit.text}*min")
-
-
+# ---------------------------------------------------------------- comparison
 def comparison_table(comparison: Comparison) -> Table:
-    """The winner and the reasons as sentences."""
-    return Table("Comparison", (), (), (comparison.sentence, *comparison.reasons))
+    """How the strategies stand, with the reasons below."""
+    rows = tuple(
+        (
+            Cell(one.strategy, "good" if one.strategy == comparison.winner else "plain"),
+            Cell(str(one.passed)),
+            Cell(str(one.failed), "bad" if one.failed else "plain"),
+            Cell(str(one.inconclusive), "open" if one.inconclusive else "plain"),
+            Cell("–" if one.margin is None else f"{rounded(100 * one.margin, 3)} %"),
+            Cell(one.tightest),
+        )
+        for one in comparison.standings
+    )
+    heads = ("strategy", "passed", "failed", "inconclusive", "smallest margin", "in rule")
+    return Table(_title(comparison), heads, rows, comparison.reasons)
 
 
-# ---------------------------------------------------------------- JSON
-def strategy_json(verdict: StrategyVerdict, trend: str | None) -> dict[str, Any]:
-    """One strategy's part of the JSON of `run`."""
-    status = verdict.run.trends.status if verdict.run.trends is not None else None
-    return {
-        "verdict": verdict.verdict,
-        "passed": verdict.verdict in ("passed", "not_judged") and not verdict.run.failure,
-        "rules": [_rule_json(one) for one in verdict.rules],
-        "metrics": {tag: dict(figures) for tag, figures in verdict.metrics.items()},
-        "status": {"code": status.code, "sentence": status.sentence} if status is not None else None,
-        "failure": verdict.run.failure or None,
-        "log": [
-            {"time_s": one.time, "text": one.text} for one in (verdict.run.trends.log if verdict.run.trends else ())
-        ],
-        "trend": trend,
-    }
-
-
-def _rule_json(one: RuleVerdict) -> dict[str, Any]:
-    finding = one.finding
-    unit = finding.unit or parse_unit("dimensionless")
-    convert = [
-        None if finite(value) is None else from_si(value or 0.0, unit) for value in (finding.value, finding.limit)
-    ]
-    found: dict[str, Any] = {
-        "rule": one.rule.text,
-        "verdict": one.verdict,
-        "value": convert[0],
-        "limit": convert[1],
-        "unit": unit.text,
-        "at_s": finite(finding.at),
-    }
-    return {**found, "reason": finding.reason} if finding.reason else found
+def _title(comparison: Comparison) -> str:
+    if comparison.winner is not None:
+        return f"Best: {comparison.winner}"
+    if comparison.tied:
+        return f"Tied: {', '.join(comparison.tied)}"
+    return f"None passes; nearest: {comparison.nearest}" if comparison.nearest is not None else "Nothing to compare"

@@ -1,0 +1,88 @@
+"""Rules checked against the signals before anything runs: names, and the unit of every limit."""
+
+from __future__ import annotations
+
+from collections.abc import Collection, Mapping, Sequence
+
+from loopsim.documents.types import Quantity, Rule
+from loopsim.errors import Problems, nearest
+from loopsim.language.dimensions import Dimension
+from loopsim.language.units import ATMOSPHERE, Unit, difference_of, parse_unit
+from loopsim.model.scales import si_value
+from loopsim.study.rules import per_step
+
+# what the limit of a kind is, on the scale of its signal (kinds left out: a time or a plain number, checked on reading)
+SCALES = {
+    "max": "point",
+    "min": "point",
+    "within": "difference",
+    "travel": "difference",
+    "deviation": "difference",
+    "overshoot": "step",
+    "undershoot": "step",
+    "iae": "times time",
+    "rate": "per time",
+}
+
+
+def check_rules(
+    rules: Sequence[Rule],
+    units: Mapping[str, Unit],
+    loops: Collection[str],
+    problems: Problems,
+    air_pressure: float = ATMOSPHERE,
+) -> None:
+    """Note what is wrong with the names and units of rules.
+
+    `units`: every signal that any of the strategies has, and the unit it is read in; `loops`: every controller's tag.
+    """
+    for rule in rules:
+        if rule.kind == "margins":
+            if rule.loop not in loops:
+                problems.add(f"no controller is called '{rule.loop}'", rule.where, nearest(rule.loop, loops, "loops"))
+        elif _known(rule, units, problems):
+            _check_units(rule, units, problems, air_pressure)
+
+
+def _known(rule: Rule, units: Mapping[str, Unit], problems: Problems) -> bool:
+    names = [rule.signal, rule.of] if isinstance(rule.of, str) else [rule.signal]
+    unknown = [name for name in names if name not in units]
+    for name in unknown:
+        problems.add(f"no signal is called '{name}'", rule.where, nearest(name, units, "signals"))
+    return not unknown
+
+
+def _check_units(rule: Rule, units: Mapping[str, Unit], problems: Problems, air_pressure: float) -> None:
+    unit = units[rule.signal]
+    if rule.limit is not None and rule.kind in SCALES:
+        _check_limit(rule, rule.limit, unit, problems, air_pressure)
+    if isinstance(rule.of, Quantity):
+        si_value(rule.of, unit, problems, air_pressure, f"'of' beside '{rule.signal}'")
+    elif isinstance(rule.of, str) and (units[rule.of].dimension, units[rule.of].point) != (unit.dimension, unit.point):
+        what = f"'{rule.signal}' is in {unit.text}, '{rule.of}' in {units[rule.of].text}: there is no difference"
+        problems.add(what, rule.where, "compare signals of one kind")
+    if rule.band is not None:
+        si_value(rule.band, difference_of(unit), problems, air_pressure, f"the band round '{rule.signal}'")
+
+
+def _check_limit(rule: Rule, limit: Quantity, unit: Unit, problems: Problems, air_pressure: float) -> None:
+    scale, what = SCALES[rule.kind], f"{rule.kind} of '{rule.signal}'"
+    difference = difference_of(unit)
+    if scale == "step" and per_step(limit):
+        return
+    if scale in ("times time", "per time"):
+        _check_product(limit, difference, "*" if scale == "times time" else "/", what, problems)
+    else:
+        si_value(limit, unit if scale == "point" else difference, problems, air_pressure, what)
+
+
+def _check_product(limit: Quantity, difference: Unit, sign: str, what: str, problems: Problems) -> None:
+    second = parse_unit("s").dimension
+    own = difference.dimension
+    wanted = own.multiply(second) if sign == "*" else own.divide(second)
+    found = limit.unit.dimension if limit.unit else Dimension()
+    if found == wanted or (limit.unit is None and limit.value == 0):
+        return
+    plain = difference.text in ("dimensionless", "count", "on/off")
+    time = "min" if plain and sign == "*" else "1/min" if plain else f"{difference.text}{sign}min"
+    problems.add(f"{limit.text} where {what} wants {time}", limit.where, f"write it in {time}")
