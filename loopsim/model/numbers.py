@@ -155,11 +155,11 @@ class System:
 def _total(line: Line, values: Mapping[str, float], slopes: dict[str, Slopes]) -> Slopes:
     """The slopes of a line from those of the names that it reads."""
     total: Slopes = {}
-    for name, partial in line.slopes:
+    for name, slope_tree in line.slopes:
         below = slopes.get(name)
         if not below:
             continue
-        factor = evaluate(partial, values)
+        factor = evaluate(slope_tree, values)
         for place, slope in below.items():
             total[place] = total.get(place, 0.0) + factor * slope
     return total

@@ -52,8 +52,16 @@ def _panel(axes: Axes, panel: Panel, pens: dict[str, tuple[str, str]]) -> None:
         axes.plot(curve.x, curve.y, style, color=colour, lw=1.2, label=curve.name, drawstyle=shape)
     for name, level in panel.levels:
         axes.axhline(level, color="#999999", lw=0.8, dashes=(6, 3))
-        style = {"xytext": (-3, 2), "textcoords": "offset points", "ha": "right", "fontsize": 7, "color": "#666666"}
-        axes.annotate(name, (1.0, level), xycoords=("axes fraction", "data"), **style)
+        axes.annotate(
+            name,
+            (1.0, level),
+            xycoords=("axes fraction", "data"),
+            xytext=(-3, 2),
+            textcoords="offset points",
+            ha="right",
+            fontsize=7,
+            color="#666666",
+        )
     axes.set_ylabel(panel.y_label)
     axes.grid(True, lw=0.3, color="#dddddd")
     for side in ("top", "right"):
