@@ -83,7 +83,7 @@ class Status:
     where: Where | None = None
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Pieces:
     """Signals at full resolution: the run cut into pieces on each of which every signal is smooth.
 

@@ -1,9 +1,9 @@
 """What the commands do: one function each, files in, results as data out."""
 
-from loopsim.api.blocks import block_json, block_page, block_table
-from loopsim.api.check import check, generated_text
-from loopsim.api.run import RunReport, run, simulate
-from loopsim.api.steady import SteadyReport, model_source, steady, steady_values
+from loopsim.api.checking import check, generated_text
+from loopsim.api.listing import block_json, block_page, block_table
+from loopsim.api.resting import SteadyReport, model_source, steady, steady_values
+from loopsim.api.running import RunReport, run, simulate
 
 __all__ = [
     "RunReport",

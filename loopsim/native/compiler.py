@@ -27,6 +27,7 @@ class Module:
     functions: dict[str, ast.FunctionDef] = field(default_factory=dict)
     constants: dict[str, float | int] = field(default_factory=dict)
     compiled: dict[str, tuple[ir.Function, str, tuple[str, ...]]] = field(default_factory=dict)
+    whole: dict[str, bool] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         for node in ast.parse(self.text).body:
@@ -67,6 +68,14 @@ class Module:
         returns = [one.value for one in ast.walk(node) if isinstance(one, ast.Return) and one.value is not None]
         return bool(returns) and all(self._is_whole(one, whole) for one in returns)
 
+    def _call_gives_whole(self, name: str) -> bool:
+        """Whether a function of the text gives a whole number, whatever it is called with."""
+        if name not in self.whole:
+            self.whole[name] = False
+            called = self.functions.get(name)
+            self.whole[name] = called is not None and self._gives_whole(called, set())
+        return self.whole[name]
+
     def _whole_names(self, node: ast.FunctionDef) -> set[str]:
         """Locals that hold whole numbers by their first assignment."""
         found: dict[str, bool] = {}
@@ -88,6 +97,5 @@ class Module:
         if isinstance(node, ast.IfExp):
             return self._is_whole(node.body, names) and self._is_whole(node.orelse, names)
         if isinstance(node, ast.Call) and isinstance(node.func, ast.Name):
-            called = self.functions.get(node.func.id)
-            return node.func.id == "int" or (called is not None and self._gives_whole(called, set()))
+            return node.func.id == "int" or self._call_gives_whole(node.func.id)
         return isinstance(node, ast.Name) and node.id in names

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from loopsim.api.run import RunReport
+from loopsim.api.running import RunReport
 from loopsim.output.figures import run_figure
 from loopsim.output.json_text import json_text
 from loopsim.output.junit import junit_text

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 
 from loopsim.documents.types import Scenario
@@ -11,7 +12,8 @@ from loopsim.model.choice import Source
 from loopsim.model.rest import OperatingPoint
 from loopsim.model.types import Model
 from loopsim.simulation.actions import free_names
-from loopsim.simulation.run import RunResult, prepare, resolve, run
+from loopsim.simulation.machine import build
+from loopsim.simulation.run import RunResult, prepare, program_of, resolve, run
 
 ROWS = 1000  # recorded rows of a run that does not say how often it records
 
@@ -38,16 +40,30 @@ def case_of(name: str, scenario: Scenario, source: Source, point: str = "") -> C
     return Case(name, scenario, model, law, resting)
 
 
+def compile_ahead(cases: Iterable[Case], judged: Callable[[Case], Iterable[str]]) -> None:
+    """Compile the programs of several cases at once: most of that work runs outside Python and can be shared out."""
+    texts = {
+        program_of(one.model, one.scenario, _judged(one, judged(one)), recorded_names(one))[1].text for one in cases
+    }
+    if len(texts) > 1:
+        with ThreadPoolExecutor(2) as pool:
+            list(pool.map(build, texts))
+
+
 def run_case(case: Case, judged: Iterable[str], number: int = 0) -> RunResult:
     """The run of a case; `judged` are names as people write them, unknown ones left out."""
-    model, scenario = case.model, case.scenario
-    wanted = {name: flat for name, flat in ((one, resolve(model, one)) for one in judged) if flat is not None}
+    scenario = case.scenario
     lasts = to_si(scenario.lasts.value, scenario.lasts.unit) if scenario.lasts.unit else scenario.lasts.value
     every = lasts / ROWS
     if scenario.record_every is not None and scenario.record_every.unit is not None:
         every = to_si(scenario.record_every.value, scenario.record_every.unit)
-    simulation = prepare(model, case.law, case.point, scenario, wanted, recorded_names(case), number)
-    return run(simulation, every)
+    wanted, recorded = _judged(case, judged), recorded_names(case)
+    return run(prepare(case.model, case.law, case.point, scenario, wanted, recorded, number), every)
+
+
+def _judged(case: Case, names: Iterable[str]) -> dict[str, str]:
+    found = {name: resolve(case.model, name) for name in names}
+    return {name: flat for name, flat in found.items() if flat is not None}
 
 
 def recorded_names(case: Case) -> dict[str, str]:

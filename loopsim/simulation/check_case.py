@@ -76,6 +76,12 @@ def _name(block: Block, check: Check, name: str, model: Model) -> str:
     return flat
 
 
+def _source(block: Block, check: Check, name: str, model: Model) -> str:
+    """The model's name of what is moved: the value given, not the one in use."""
+    flat = f"{block.name}.{block.ports.get(name, name)}"
+    return flat if flat in model.slots else _name(block, check, name, model)
+
+
 def _refuse_other_kind(check: Check, dimension: Dimension, point: bool = False) -> None:
     """The value expected must be of the kind of what is asked for."""
     unit = _unit(check)
@@ -95,14 +101,17 @@ def _slope(block: Block, check: Check, law: Model) -> float:
     """The gain [SI] or the time constant [s] between two names at rest."""
     ends = check.gain or check.time_constant
     assert ends is not None
-    source, target = (_name(block, check, one, law) for one in ends)
+    source, target = _source(block, check, ends[0], law), _name(block, check, ends[1], law)
     quotient = _scale(law, target).dimension.divide(_scale(law, source).dimension)
     _refuse_other_kind(check, quotient if check.gain else parse_unit("s").dimension)
     matrix, by_source, by_unknown, direct, mass = _linear(law, rest(law), source, target)
+    # what nothing moves stands where it is, such as the integral term of a controller without integral action
+    moved = np.any(matrix != 0.0, axis=1) | (by_source != 0.0)
+    matrix = matrix[np.ix_(moved, moved)]
     try:
-        move = np.linalg.solve(matrix, by_source)
-        gain = direct - float(by_unknown @ move)
-        later = float(by_unknown @ np.linalg.solve(matrix, mass * move))
+        move = np.linalg.solve(matrix, by_source[moved])
+        gain = direct - float(by_unknown[moved] @ move)
+        later = float(by_unknown[moved] @ np.linalg.solve(matrix, mass[moved] * move))
     except np.linalg.LinAlgError:
         what = f"'{ends[1]}' does not come to rest after a step of '{ends[0]}': there is no gain"
         raise ComputationError([Problem(what, "ask for a value `after` a time", check.where)]) from None

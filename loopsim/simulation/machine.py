@@ -5,6 +5,7 @@ Only a `RunState` evolves; it is a value: `copy()` is a snapshot from which the 
 
 from __future__ import annotations
 
+import hashlib
 import importlib
 import linecache
 import math
@@ -113,7 +114,7 @@ class RunState:
 
 
 @lru_cache(maxsize=64)
-def build(model_text: str, name: str, native: bool = True) -> Machine:
+def build(model_text: str, native: bool = True) -> Machine:
     """Engine and model as one module; tracebacks show its lines.
 
     `native`: the inner loop as machine code, the same bits; as Python where llvmlite is missing.
@@ -122,7 +123,7 @@ def build(model_text: str, name: str, native: bool = True) -> Machine:
     engine = "\n".join((files("loopsim.simulation.engine") / f"{part}.py").read_text("utf-8") for part in ENGINE)
     constants = f"STRIDE = {2 + 5 * sizes['NW']}\nECHOES = {ECHOES}\n"
     text = "\n".join([constants, model_text, "\n".join(unrolled(sizes["NX"])), engine])
-    filename = f"<model {name}>"
+    filename = f"<model {hashlib.sha256(text.encode()).hexdigest()[:12]}>"
     linecache.cache[filename] = (len(text), None, text.splitlines(keepends=True), filename)
     namespace: dict[str, Any] = dict(GUARDED_FUNCTIONS)
     exec(compile(text, filename, "exec"), namespace)

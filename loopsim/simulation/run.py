@@ -6,6 +6,7 @@ import heapq
 import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
+from functools import lru_cache
 
 import numpy as np
 
@@ -111,17 +112,9 @@ def prepare(
         if number not in skipped:
             check_target(event, model, problems)
     problems.raise_if_any()
-    conditions, owners = _conditions(model, scenario, skipped)
-    moving = frozenset(
-        target_of(event)
-        for number, event in enumerate(scenario.events)
-        if event.kind in ("ramp", "sine", "follow") and number not in skipped
-    )
-    flags = {name: name for name, signal in model.signals.items() if signal.unit is ON_OFF and resolve(model, name)}
-    watched = {**flags, **judged}
-    wishes = Wishes(tuple(dict.fromkeys(watched.values())), tuple(recorded.values()), conditions, moving)
-    program = generate(model, wishes)
-    machine = build(program.text, model.name)
+    watched, program, owners = program_of(model, scenario, judged, recorded)
+    conditions = program.conditions
+    machine = build(program.text)
     first = start_values(model, program, law, point)
     machine.prepare(first.p)
     lasts = seconds(scenario.lasts)
@@ -136,6 +129,29 @@ def prepare(
             _queue_happening(simulation, number, seconds(event.at))
             _queue(simulation, simulation.actions.of(number, seconds(event.at)))
     return simulation
+
+
+def program_of(
+    model: Model, scenario: Scenario, judged: Mapping[str, str], recorded: Mapping[str, str]
+) -> tuple[dict[str, str], Program, dict[int, int]]:
+    """What pieces show (name -> model's name), the program of a run, and the events behind its conditions."""
+    skipped = {k for k, event in enumerate(scenario.events) if not_applicable(event, model)}
+    conditions, owners = _conditions(model, scenario, skipped)
+    moving = frozenset(
+        target_of(event)
+        for number, event in enumerate(scenario.events)
+        if event.kind in ("ramp", "sine", "follow") and number not in skipped
+    )
+    flags = {name: name for name, signal in model.signals.items() if signal.unit is ON_OFF and resolve(model, name)}
+    watched = dict(sorted({**flags, **judged}.items()))
+    wishes = Wishes(tuple(dict.fromkeys(watched.values())), tuple(recorded.values()), conditions, moving)
+    return watched, _generated(model, wishes), owners
+
+
+@lru_cache(maxsize=64)
+def _generated(model: Model, wishes: Wishes) -> Program:
+    """The program of a model; scenarios that want the same share it."""
+    return generate(model, wishes)
 
 
 # ---------------------------------------------------------------- conditions

@@ -7,6 +7,7 @@ that what is found does not depend on how the run was cut into pieces.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -65,6 +66,7 @@ class Point:
 
 
 # ---------------------------------------------------------------- making paths
+@lru_cache(maxsize=16)
 def path_of(pieces: Pieces, name: str) -> Path:
     """The whole path of one signal. Raises `ValueError` for a name that the pieces do not hold."""
     quartics = coefficients(pieces.samples[:, :, pieces.names.index(name)])

@@ -22,15 +22,15 @@ def coefficients(samples: FloatArray) -> FloatArray:
 
     Made of forward differences, so that equal samples give an exact constant.
     """
-    differences = [np.diff(samples, order, axis=1)[:, 0] for order in range(1, 5)]
-    first, second, third, fourth = differences
+    columns = np.ascontiguousarray(samples.T)
+    first, second, third, fourth = (np.diff(columns, order, axis=0)[0] for order in range(1, 5))
     powers = (
         first - second / 2 + third / 3 - fourth / 4,
         second / 2 - third / 2 + 11 * fourth / 24,
         third / 6 - fourth / 4,
         fourth / 24,
     )
-    return np.stack([samples[:, 0], *(4.0 ** (k + 1) * power for k, power in enumerate(powers))], axis=1)
+    return np.stack([columns[0], *(4.0 ** (k + 1) * power for k, power in enumerate(powers))]).T
 
 
 def value(polynomials: FloatArray, share: FloatArray) -> FloatArray:
@@ -49,8 +49,14 @@ def derivative(polynomials: FloatArray) -> FloatArray:
 
 def hull(polynomials: FloatArray) -> tuple[FloatArray, FloatArray]:
     """Bounds (n,), (n,) between which each polynomial lies on 0…1: the least and greatest Bernstein coefficient."""
-    bernstein = polynomials @ _to_bernstein(polynomials.shape[1])
-    return bernstein.min(axis=1), bernstein.max(axis=1)
+    matrix, columns = _to_bernstein(polynomials.shape[1]), polynomials.T
+    low = high = columns[0]
+    for j in range(1, len(columns)):
+        bernstein = columns[0].copy()
+        for k in range(1, j + 1):
+            bernstein += matrix[k, j] * columns[k]
+        low, high = np.minimum(low, bernstein), np.maximum(high, bernstein)
+    return low, high
 
 
 @cache

@@ -14,7 +14,7 @@ from loopsim.errors import ComputationError, Problems, fail
 from loopsim.language.units import Unit
 from loopsim.model.choice import Source, scenario_sources
 from loopsim.results import Table, Trends
-from loopsim.simulation.case import Case, case_of, run_case
+from loopsim.simulation.case import Case, case_of, compile_ahead, run_case
 from loopsim.study.checks import check_rules
 from loopsim.study.compare import compare
 from loopsim.study.export import comparison_json, to_json
@@ -116,6 +116,7 @@ def _judged(scenario: Scenario, sources: Mapping[str, Source], point: str) -> tu
                 failures[name] = f"{error.problems[0].what}; {error.problems[0].hint}"
     problems.raise_if_any()
     _check_rules(scenario, cases)
+    compile_ahead(cases.values(), names_to_judge)
     runs = [_run(name, scenario, cases, failures) for name in sources]
     return tuple(
         judge(scenario.name, one, scenario.accept)

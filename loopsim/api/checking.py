@@ -92,4 +92,4 @@ def generated_text(path: Path, strategies: Sequence[Path] = ()) -> str:
     )
     model = source.timed()
     names = tuple(name for name in model.signals if name in model.assignments or name in model.states)
-    return build(generate(model, Wishes(recorded=names)).text, model.name, native=False).text
+    return build(generate(model, Wishes(recorded=names)).text, native=False).text
