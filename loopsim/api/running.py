@@ -19,9 +19,9 @@ from loopsim.study.checks import check_rules
 from loopsim.study.compare import compare
 from loopsim.study.export import comparison_json, to_json
 from loopsim.study.judge import judge
-from loopsim.study.observe import names_to_judge, run_of
+from loopsim.study.observe import names_to_judge, rule_names, run_of
 from loopsim.study.tables import comparison_table, metrics_table, verdict_table
-from loopsim.study.types import FAILED, NOT_JUDGED, PASSED, Comparison, Judged, Run, not_run
+from loopsim.study.types import FAILED, NOT_JUDGED, PASSED, Comparison, Judged, not_run
 from loopsim.study.windows import seconds
 
 CAUTION = "design and training aid; not a safety system and no part of one"
@@ -69,10 +69,13 @@ def run(paths: Sequence[Path], strategy: str = "", point: str = "") -> RunReport
 
     Raises `InputError`; a strategy that cannot be computed is told in its column, and the others go on.
     """
-    judgements = []
-    for path in scenario_files(paths):
-        scenario, sources = scenario_sources(path, strategy)
-        judgements.append(Judgement(scenario, run_id(path, scenario), _judged(scenario, sources, point)))
+    plans = [(path, *scenario_sources(path, strategy)) for path in scenario_files(paths)]
+    # what any of the scenarios judges is kept in all of them, so that they share one program
+    names = dict.fromkeys(name for _, scenario, _ in plans for name in rule_names(scenario))
+    judgements = [
+        Judgement(scenario, run_id(path, scenario), _judged(scenario, sources, point, tuple(names)))
+        for path, scenario, sources in plans
+    ]
     every = [one for judgement in judgements for one in judgement.strategies]
     several = any(len(one.strategies) > 1 for one in judgements)
     comparison = compare(every) if several and any(one.verdicts for one in every) else None
@@ -106,7 +109,9 @@ def scenario_files(paths: Sequence[Path]) -> list[Path]:
     return found
 
 
-def _judged(scenario: Scenario, sources: Mapping[str, Source], point: str) -> tuple[Judged, ...]:
+def _judged(
+    scenario: Scenario, sources: Mapping[str, Source], point: str, names: tuple[str, ...]
+) -> tuple[Judged, ...]:
     problems, cases, failures = Problems(), dict[str, Case](), dict[str, str]()
     for name, source in sources.items():
         with problems.collecting():
@@ -116,21 +121,20 @@ def _judged(scenario: Scenario, sources: Mapping[str, Source], point: str) -> tu
                 failures[name] = f"{error.problems[0].what}; {error.problems[0].hint}"
     problems.raise_if_any()
     _check_rules(scenario, cases)
-    compile_ahead(cases.values(), names_to_judge)
-    runs = [_run(name, scenario, cases, failures) for name in sources]
+    wanted = {name: (*names, *names_to_judge(case)) for name, case in cases.items()}
+    compile_ahead([(case, wanted[name]) for name, case in cases.items()])
+    runs = [
+        not_run(name, failures[name], seconds(scenario.lasts))
+        if name in failures
+        else run_of(cases[name], run_case(cases[name], wanted[name]))
+        for name in sources
+    ]
     return tuple(
         judge(scenario.name, one, scenario.accept)
         if one.strategy in cases
         else Judged(scenario.name, one, FAILED, (), ())
         for one in runs
     )
-
-
-def _run(name: str, scenario: Scenario, cases: Mapping[str, Case], failures: Mapping[str, str]) -> Run:
-    if name in failures:
-        return not_run(name, failures[name], seconds(scenario.lasts))
-    case = cases[name]
-    return run_of(case, run_case(case, names_to_judge(case)))
 
 
 def _check_rules(scenario: Scenario, cases: Mapping[str, Case]) -> None:

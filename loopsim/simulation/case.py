@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Iterable
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 
@@ -40,10 +40,10 @@ def case_of(name: str, scenario: Scenario, source: Source, point: str = "") -> C
     return Case(name, scenario, model, law, resting)
 
 
-def compile_ahead(cases: Iterable[Case], judged: Callable[[Case], Iterable[str]]) -> None:
-    """Compile the programs of several cases at once: most of that work runs outside Python and can be shared out."""
+def compile_ahead(cases: Iterable[tuple[Case, Iterable[str]]]) -> None:
+    """Compile the programs of several cases, with the names that each has to judge, at once: most of that work runs outside Python and can be shared out."""
     texts = {
-        program_of(one.model, one.scenario, _judged(one, judged(one)), recorded_names(one))[1].text for one in cases
+        program_of(one.model, one.scenario, _judged(one, names), recorded_names(one))[1].text for one, names in cases
     }
     if len(texts) > 1:
         with ThreadPoolExecutor(2) as pool:

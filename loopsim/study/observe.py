@@ -6,7 +6,7 @@ from collections.abc import Iterable
 
 import networkx as nx
 
-from loopsim.documents.types import Event, Rule
+from loopsim.documents.types import Event, Rule, Scenario
 from loopsim.model.graph import influences, reached_from
 from loopsim.model.types import Model
 from loopsim.simulation.actions import target_of
@@ -18,10 +18,14 @@ from loopsim.study.windows import seconds
 
 def names_to_judge(case: Case) -> tuple[str, ...]:
     """The signals that rules and figures look at: what a run has to keep at full resolution."""
-    rules = case.scenario.accept
-    names = [name for rule in rules for name in (rule.signal, rule.of) if isinstance(name, str) and name]
+    names = rule_names(case.scenario)
     names += [name for one in case.model.controllers for name in (one.pv, one.sp, one.out)]
     return tuple(dict.fromkeys(names))
+
+
+def rule_names(scenario: Scenario) -> list[str]:
+    """The signals that a scenario's rules speak of."""
+    return [name for rule in scenario.accept for name in (rule.signal, rule.of) if isinstance(name, str) and name]
 
 
 def run_of(
