@@ -2,11 +2,16 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass, replace
+from itertools import combinations
+from random import Random
 
 import numpy as np
+from numpy.typing import NDArray
 
 from loopsim.errors import ComputationError, Problem
+from loopsim.language.evaluate import evaluate
 from loopsim.language.tree import Name
 from loopsim.language.units import from_si
 from loopsim.model.numbers import FloatArray, System
@@ -18,6 +23,10 @@ GROWTH = 3.0  # of one step to the next
 LAST_STEP = 1e13  # s: from here on a step is Newton's method on the rates
 FARTHEST = 100.0  # times full output: beyond that the output has no hold on the measurement worth a number
 NO_LIMIT = 1e9  # controller limits when asking what would be needed
+SHARES = (0.0, 0.25, 0.5, 2.0, 4.0)  # of what a state is at rest: where a search for further rests starts
+KELVIN_SHARES = (0.85, 0.92, 1.08, 1.15, 1.3)  # the same for a scale that starts far below its daily use
+FEW_STEPS = 60  # enough to grow from 1 s to the last step twice over: a start that needs more is given up
+MIXED = 24  # starts with all states moved at once
 
 
 @dataclass(frozen=True, slots=True)
@@ -84,16 +93,16 @@ def _wished(model: Model, begin: FloatArray) -> _Wish | None:
     return None
 
 
-def settled(system: System, u: FloatArray, first: float = 1.0) -> FloatArray:
+def settled(system: System, u: FloatArray, first: float = 1.0, steps: int = STEPS) -> FloatArray:
     """Follow the plant to its rest by implicit Euler steps that grow until they are Newton's method on the rates.
 
-    `first` [s] is the first step.
+    `first` [s] is the first step, `steps` how many are tried.
     """
     if not len(u):
         return u
     mass = np.array([1.0] * system.states + [0.0] * (len(u) - system.states))
     step = first
-    for _ in range(STEPS):
+    for _ in range(steps):
         trial = _implicit_step(system, u, mass / step)
         if trial is None:
             step /= 8.0
@@ -225,3 +234,92 @@ def eigenvalues_of(system: System, matrix: FloatArray) -> FloatArray:
         inner = inner - matrix[:count, count:] @ below
     kept = [k for k, name in enumerate(system.unknowns[:count]) if not system.model.states[name].mapped]
     return np.asarray(np.linalg.eigvals(inner[np.ix_(kept, kept)])) if kept else np.zeros(0)
+
+
+# ---------------------------------------------------------------- further rests
+def all_rests(model: Model) -> list[OperatingPoint]:
+    """Every operating point that a search from many starts finds, the one of `rest` first.
+
+    The starts move one state at a time and all at once, and lie between rests already found, where those that are not
+    stable hide. Each is followed in time and by Newton's method. What nothing determines keeps its start. Raises
+    `ComputationError` where there is no rest at all; that there are no more rests is not proven.
+    """
+    system, first = System(model), rest(model)
+    found = [np.array([first.values[name] for name in system.unknowns])]
+    for begin in _starts(system, found[0]):
+        _look(system, begin, found)
+    known = 0
+    while known < len(found):
+        known = len(found)
+        for one, other in combinations(found[:known], 2):
+            for share in (0.25, 0.5, 0.75):
+                _look(system, one + share * (other - one), found)
+    points = [OperatingPoint(values, values, _unreached(model, values, None)) for values in map(system.values, found)]
+    return [first, *points[1:]]
+
+
+def _starts(system: System, at_rest: FloatArray) -> Iterator[FloatArray]:
+    """Places round a rest, the same ones every time."""
+    moving = np.flatnonzero(~_undetermined(system, at_rest))
+    choices = {place: _levels(system, int(place), float(at_rest[place])) for place in moving}
+    for place, levels in choices.items():
+        for level in levels:
+            begin = at_rest.copy()
+            begin[place] = level
+            yield begin
+    draw = Random(1)
+    for _ in range(MIXED if len(moving) > 1 else 0):
+        begin = at_rest.copy()
+        for place, levels in choices.items():
+            begin[place] = levels[int(draw.random() * len(levels))]
+        yield begin
+
+
+def _levels(system: System, place: int, value: float) -> list[float]:
+    state = system.model.states.get(system.unknowns[place])
+    unit = state.unit if state is not None else None
+    if unit is not None and unit.offset:
+        return [share * value for share in KELVIN_SHARES]
+    base = value if value else (unit.factor if unit is not None else 1.0)
+    return [share * base for share in SHARES]
+
+
+def _undetermined(system: System, u: FloatArray) -> NDArray[np.bool_]:
+    """Which unknowns may move without leaving the rest: parts of directions in which no rate changes."""
+    matrix = system.jacobian(system.values(u)) * (np.abs(u) + 1e-9)
+    largest = np.max(np.abs(matrix), axis=1, keepdims=True)
+    _, sizes, directions = np.linalg.svd(matrix / np.where(largest > 0, largest, 1.0))
+    idle = directions[sizes <= 1e-10 * max(float(sizes[0]), 1e-300)]
+    return np.asarray(np.any(np.abs(idle) > 1e-6, axis=0), dtype=np.bool_)
+
+
+def _look(system: System, begin: FloatArray, found: list[FloatArray]) -> None:
+    """Add the rests that a start leads to, in time and by Newton's method, where they are new and possible."""
+    for step in (LAST_STEP, 1.0):
+        try:
+            with np.errstate(all="ignore"):
+                u = settled(system, begin, step, FEW_STEPS)
+        except (ComputationError, ArithmeticError, ValueError, np.linalg.LinAlgError):
+            continue
+        if _possible(system, u) and not any(_same(system, u, other) for other in found):
+            found.append(u)
+
+
+def _same(system: System, u: FloatArray, other: FloatArray) -> bool:
+    """Whether two rests differ in nothing but what nothing determines."""
+    fixed = ~(_undetermined(system, u) | _undetermined(system, other))
+    return bool(np.allclose(u[fixed], other[fixed], rtol=1e-6, atol=1e-9))
+
+
+def _possible(system: System, u: FloatArray) -> bool:
+    """Whether every name has a value there and the watched levels hold."""
+    bounds, values = system.model.bounds, system.values(u)
+    if not all(np.isfinite(value) for value in values.values() if isinstance(value, float)):
+        return False
+    return all(_kept(bound.relation, values[bound.signal], float(evaluate(bound.limit, values))) for bound in bounds)
+
+
+def _kept(relation: str, value: float, limit: float) -> bool:
+    """Whether a watched level holds, rounding left aside."""
+    near = 1e-9 * (abs(limit) + 1e-6)
+    return value >= limit - near if relation in ("above", "at_least") else value <= limit + near

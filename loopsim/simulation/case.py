@@ -12,8 +12,9 @@ from loopsim.model.choice import Source
 from loopsim.model.rest import OperatingPoint
 from loopsim.model.types import Model
 from loopsim.simulation.actions import free_names
+from loopsim.simulation.conditions import resolve
 from loopsim.simulation.machine import build
-from loopsim.simulation.run import RunResult, prepare, program_of, resolve, run
+from loopsim.simulation.run import RunResult, prepare, program_of, run
 
 ROWS = 1000  # recorded rows of a run that does not say how often it records
 

@@ -11,7 +11,8 @@ from loopsim.model.graph import influences, reached_from
 from loopsim.model.types import Model
 from loopsim.simulation.actions import target_of
 from loopsim.simulation.case import Case
-from loopsim.simulation.run import Happened, RunResult, resolve
+from loopsim.simulation.conditions import resolve
+from loopsim.simulation.run import Happened, RunResult
 from loopsim.study.types import Happening, Loop, LoopMargins, Run
 from loopsim.study.windows import seconds
 

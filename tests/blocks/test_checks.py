@@ -103,7 +103,7 @@ def test_a_wrong_factor_is_found(tmp_path: Path, name: str, kind: str, old: str,
 @pytest.mark.parametrize(
     ("old", "new", "expected"),
     [
-        ("is: 0.28", "is: 0.28 K #", "where K"),
+        ("is: 0.28752 K/kW", "is: 0.28752 kW/K", "where K/W is meant"),
         ("gain: [Q, T]", "gain: [Q, temperature]", "no 'temperature'"),
         ("within: 0.1 %", "within: 1 kg", "1 kg"),
     ],
