@@ -42,7 +42,10 @@ def case_of(name: str, scenario: Scenario, source: Source, point: str = "") -> C
 
 
 def compile_ahead(cases: Iterable[tuple[Case, Iterable[str]]]) -> None:
-    """Compile the programs of several cases, with the names that each has to judge, at once: most of that work runs outside Python and can be shared out."""
+    """Compile the programs of several cases, each with the names it judges, at once.
+
+    Most of that work runs outside Python and can be shared out.
+    """
     texts = {
         program_of(one.model, one.scenario, _judged(one, names), recorded_names(one))[1].text for one, names in cases
     }

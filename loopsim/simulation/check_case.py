@@ -15,7 +15,8 @@ from loopsim.model.numbers import FloatArray, System
 from loopsim.model.rest import OperatingPoint, rest
 from loopsim.model.scales import si_value
 from loopsim.model.types import Model
-from loopsim.simulation.run import prepare, resolve, run
+from loopsim.simulation.conditions import resolve
+from loopsim.simulation.run import prepare, run
 
 
 def run_check(block: Block, check: Check, library: Library) -> tuple[float, bool]:
