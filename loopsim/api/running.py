@@ -64,8 +64,10 @@ def _document(one: Judgement, trends: Mapping[str, str]) -> dict[str, Any]:
     return {**document, "version": __version__, "seed": one.scenario.seed}
 
 
-def run(paths: Sequence[Path], strategy: str = "", point: str = "") -> RunReport:
+def run(paths: Sequence[Path], strategy: str = "", point: str = "", native: bool = True) -> RunReport:
     """Run and judge every strategy of the scenarios (files, or folders that hold them).
+
+    `point`: an operating point of the plant; `native`: compiled, else interpreted (the same bits).
 
     Raises `InputError`; a strategy that cannot be computed is told in its column, and the others go on.
     """
@@ -73,7 +75,7 @@ def run(paths: Sequence[Path], strategy: str = "", point: str = "") -> RunReport
     # what any of the scenarios judges is kept in all of them, so that they share one program
     names = dict.fromkeys(name for _, scenario, _ in plans for name in rule_names(scenario))
     judgements = [
-        Judgement(scenario, run_id(path, scenario), _judged(scenario, sources, point, tuple(names)))
+        Judgement(scenario, run_id(path, scenario), _judged(scenario, sources, point, tuple(names), native))
         for path, scenario, sources in plans
     ]
     every = [one for judgement in judgements for one in judgement.strategies]
@@ -110,7 +112,7 @@ def scenario_files(paths: Sequence[Path]) -> list[Path]:
 
 
 def _judged(
-    scenario: Scenario, sources: Mapping[str, Source], point: str, names: tuple[str, ...]
+    scenario: Scenario, sources: Mapping[str, Source], point: str, names: tuple[str, ...], native: bool
 ) -> tuple[Judged, ...]:
     problems, cases, failures = Problems(), dict[str, Case](), dict[str, str]()
     for name, source in sources.items():
@@ -122,11 +124,12 @@ def _judged(
     problems.raise_if_any()
     _check_rules(scenario, cases)
     wanted = {name: (*names, *names_to_judge(case)) for name, case in cases.items()}
-    compile_ahead([(case, wanted[name]) for name, case in cases.items()])
+    if native:
+        compile_ahead([(case, wanted[name]) for name, case in cases.items()])
     runs = [
         not_run(name, failures[name], seconds(scenario.lasts))
         if name in failures
-        else run_of(cases[name], run_case(cases[name], wanted[name]))
+        else run_of(cases[name], run_case(cases[name], wanted[name], native=native))
         for name in sources
     ]
     return tuple(

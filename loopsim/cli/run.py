@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import time
 from pathlib import Path
 
@@ -22,10 +23,8 @@ from loopsim.output.text import render
     "--out", type=click.Path(path_type=Path), help="Write trends (CSV), pictures, JSON and a JUnit file here."
 )
 @click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output.")
-@click.option("--interpreted", is_flag=True, help="Run without compilation (always so in this version).")
-@click.option(
-    "--cache", type=click.Path(path_type=Path), help="Where compiled plants are kept (not used in this version)."
-)
+@click.option("--interpreted", is_flag=True, help="Run without compilation; the same results, slower.")
+@click.option("--cache", type=click.Path(path_type=Path), help="Where compiled plants are kept; safe to delete.")
 @click.option("--timing", is_flag=True, help="Print how long it took to standard error.")
 def command(
     scenarios: tuple[Path, ...],
@@ -41,9 +40,10 @@ def command(
 
     Leaves with 0 when every strategy under `must_pass` passed every rule, 1 when one failed or was inconclusive.
     """
-    del interpreted, cache
+    if cache is not None:
+        os.environ["LOOPSIM_CACHE"] = str(cache)
     begun = time.perf_counter()
-    report = api.run(scenarios, strategy, points)
+    report = api.run(scenarios, strategy, points, native=not interpreted)
     written = write_run(report, out) if out is not None else None
     if as_json:
         click.echo(json_text(report.json(written)))

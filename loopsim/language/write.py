@@ -1,55 +1,77 @@
-"""Trees written as formulas, with no more parentheses than they need."""
+"""Trees written as text that `parse_formula` reads back, with no more parentheses than needed."""
 
 from __future__ import annotations
 
-from loopsim.language.tree import Call, Expression, Index, Name, Number, Operation, Rate
+import math
 
-STRENGTH = {"or": 1, "and": 2, "not": 3, "<": 4, "<=": 4, ">": 4, ">=": 4, "==": 4, "!=": 4,
-            "+": 5, "-": 5, "*": 6, "/": 6, "neg": 7, "^": 8}  # fmt: skip
+from loopsim.language.tree import ARITHMETIC, COMPARISONS, Call, Expression, Index, Name, Number, Operation, Rate
+
+# how strongly each operator binds; minus stands between products and powers
+STRENGTH = {"or": 1, "and": 2, "not": 3, "+": 5, "-": 5, "*": 6, "/": 6, "neg": 7, "^": 8}
+STRENGTH |= dict.fromkeys(COMPARISONS, 4)
 ATOM = 9
 
 
 def write(tree: Expression) -> str:
-    """The formula's text; reading it gives the tree back."""
-    return _written(tree)[0]
+    """The text of a tree: `a*(b + c)`, `dT/dt`, `where(x > 0, x, 0)`."""
+    return _text(tree)[0]
 
 
-def _written(tree: Expression) -> tuple[str, int]:
-    if isinstance(tree, Number):
-        text = f"{tree.value:g}" if float(f"{tree.value:g}") == tree.value else repr(tree.value)
-        return (f"({text})", ATOM) if tree.value < 0 else (text, ATOM)
-    if isinstance(tree, Name):
-        return tree.name + (f"[{_index(tree.index)}]" if tree.index is not None else ""), ATOM
-    if isinstance(tree, Rate):
-        inner, _ = _written(tree.argument)
-        return (f"d{inner}/dt" if isinstance(tree.argument, Name) else f"d({inner})/dt"), ATOM
-    if isinstance(tree, Call):
-        return f"{tree.function}({', '.join(write(one) for one in tree.arguments)})", ATOM
+def shortened(tree: Expression, longest: int = 60) -> str:
+    """The text of a tree for a message, its middle left out where it is long."""
+    text = write(tree)
+    half = (longest - 3) // 2
+    return text if len(text) <= longest else f"{text[:half]} … {text[-half:]}"
+
+
+def index_text(index: Index) -> str:
+    """An index with its brackets: `[i]`, `[i-1]`, `[0]`, `[n+1]`."""
+    if index.base is None:
+        return f"[{index.offset}]"
+    return f"[{index.base}{index.offset:+d}]" if index.offset else f"[{index.base}]"
+
+
+def _text(tree: Expression) -> tuple[str, int]:
+    """The text of a tree and how strongly it binds."""
+    match tree:
+        case Number():
+            return _number(tree.value)
+        case Name():
+            return tree.name + (index_text(tree.index) if tree.index else ""), ATOM
+        case Rate(Name()):
+            return f"d{_text(tree.argument)[0]}/dt", ATOM
+        case Rate():
+            return f"d({_text(tree.argument)[0]})/dt", ATOM
+        case Call():
+            return f"{tree.function}({', '.join(write(one) for one in tree.arguments)})", ATOM
     return _operation(tree)
 
 
-def _index(index: Index) -> str:
-    if index.base is None:
-        return str(index.offset)
-    return f"{index.base}{index.offset:+d}" if index.offset else index.base
+def _number(value: float) -> tuple[str, int]:
+    if math.isnan(value):
+        return "(0/0)", ATOM
+    if math.isinf(value):
+        return ("(1/0)", ATOM) if value > 0 else ("-1/0", STRENGTH["/"])
+    return repr(value).removesuffix(".0"), ATOM if math.copysign(1.0, value) > 0 else STRENGTH["neg"]
 
 
 def _operation(tree: Operation) -> tuple[str, int]:
-    strength = STRENGTH[tree.operator]
-    if tree.operator in ("neg", "not"):
-        inner = _inside(tree.arguments[0], strength)
-        return (f"-{inner}" if tree.operator == "neg" else f"not {inner}"), strength
-    # powers group to the right, everything else to the left; comparisons do not chain
-    left_least, right_least = strength, strength + 1
+    own = STRENGTH[tree.operator]
+    texts = [_text(one) for one in tree.arguments]
+    if tree.operator == "neg":
+        return "-" + _held(*texts[0], own + 1), own
+    if tree.operator == "not":
+        return "not " + _held(*texts[0], own), own
+    left, right = texts
     if tree.operator == "^":
-        left_least, right_least = ATOM, STRENGTH["neg"]
-    elif strength == STRENGTH["<"]:
-        left_least = strength + 1
-    left, right = _inside(tree.arguments[0], left_least), _inside(tree.arguments[1], right_least)
-    tight = tree.operator in ("*", "/", "^")
-    return (f"{left}{tree.operator}{right}" if tight else f"{left} {tree.operator} {right}"), strength
+        return f"{_held(*left, ATOM)}^{_held(*right, STRENGTH['neg'])}", own
+    space = "" if tree.operator in ("*", "/") else " "
+    # comparisons do not chain; a minus behind another sign reads better in parentheses
+    left_least = own + 1 if tree.operator in COMPARISONS else own
+    right_least = ATOM if right[0].startswith("-") and tree.operator in ARITHMETIC else own + 1
+    return f"{_held(*left, left_least)}{space}{tree.operator}{space}{_held(*right, right_least)}", own
 
 
-def _inside(tree: Expression, least: int) -> str:
-    text, strength = _written(tree)
+def _held(text: str, strength: int, least: int) -> str:
+    """The text of a part, in parentheses where it binds less than `least`."""
     return text if strength >= least else f"({text})"

@@ -54,7 +54,7 @@ def compile_ahead(cases: Iterable[tuple[Case, Iterable[str]]]) -> None:
             list(pool.map(build, texts))
 
 
-def run_case(case: Case, judged: Iterable[str], number: int = 0) -> RunResult:
+def run_case(case: Case, judged: Iterable[str], number: int = 0, native: bool = True) -> RunResult:
     """The run of a case; `judged` are names as people write them, unknown ones left out."""
     scenario = case.scenario
     lasts = to_si(scenario.lasts.value, scenario.lasts.unit) if scenario.lasts.unit else scenario.lasts.value
@@ -62,7 +62,7 @@ def run_case(case: Case, judged: Iterable[str], number: int = 0) -> RunResult:
     if scenario.record_every is not None and scenario.record_every.unit is not None:
         every = to_si(scenario.record_every.value, scenario.record_every.unit)
     wanted, recorded = _judged(case, judged), recorded_names(case)
-    return run(prepare(case.model, case.law, case.point, scenario, wanted, recorded, number), every)
+    return run(prepare(case.model, case.law, case.point, scenario, wanted, recorded, number, native), every)
 
 
 def _judged(case: Case, names: Iterable[str]) -> dict[str, str]:

@@ -89,10 +89,11 @@ def prepare(
     judged: Mapping[str, str],
     recorded: Mapping[str, str],
     run: int = 0,
+    native: bool = True,
 ) -> Simulation:
     """A simulation at its first instant, events at t = 0 still to come.
 
-    `judged` and `recorded` map the names that people read to the model's names.
+    `judged` and `recorded` map the names that people read to the model's names. `native`: compiled, else interpreted.
     """
     problems = Problems()
     skipped = {k for k, event in enumerate(scenario.events) if not_applicable(event, model)}
@@ -102,7 +103,7 @@ def prepare(
     problems.raise_if_any()
     watched, program, owners = program_of(model, scenario, judged, recorded)
     conditions = program.conditions
-    machine = build(program.text)
+    machine = build(program.text, native)
     first = start_values(model, program, law, point)
     machine.prepare(first.p)
     lasts = seconds(scenario.lasts)
