@@ -23,10 +23,10 @@ GROWTH = 3.0  # of one step to the next
 LAST_STEP = 1e13  # s: from here on a step is Newton's method on the rates
 FARTHEST = 100.0  # times full output: beyond that the output has no hold on the measurement worth a number
 NO_LIMIT = 1e9  # controller limits when asking what would be needed
-SHARES = (0.0, 0.25, 0.5, 2.0, 4.0)  # of what a state is at rest: where a search for further rests starts
-KELVIN_SHARES = (0.85, 0.92, 1.08, 1.15, 1.3)  # the same for a scale that starts far below its daily use
-FEW_STEPS = 60  # enough to grow from 1 s to the last step twice over: a start that needs more is given up
-MIXED = 24  # starts with all states moved at once
+SHARES = (0.0, 0.3, 2.0, 4.0)  # of what a state is at rest: where a search for further rests starts
+KELVIN_SHARES = (0.9, 1.1, 1.2, 1.3)  # the same for a scale that starts far below its daily use
+REFUSALS = 3  # steps that such a start may fail before it is given up
+MIXED = 16  # starts with all states moved at once
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,28 +93,34 @@ def _wished(model: Model, begin: FloatArray) -> _Wish | None:
     return None
 
 
-def settled(system: System, u: FloatArray, first: float = 1.0, steps: int = STEPS) -> FloatArray:
+def settled(system: System, u: FloatArray, first: float = 1.0) -> FloatArray:
     """Follow the plant to its rest by implicit Euler steps that grow until they are Newton's method on the rates.
 
-    `first` [s] is the first step, `steps` how many are tried.
+    `first` [s] is the first step. Raises `ComputationError` where that leads to no rest.
     """
-    if not len(u):
-        return u
+    u, arrived = _followed(system, u, first, STEPS)
+    if not arrived:
+        raise _no_rest(system, u, system.residuals(system.values(u)))
+    return u
+
+
+def _followed(system: System, u: FloatArray, first: float, refusals: int) -> tuple[FloatArray, bool]:
+    """Where that leads, and whether it is a rest; given up after so many refused steps."""
     mass = np.array([1.0] * system.states + [0.0] * (len(u) - system.states))
     step = first
-    for _ in range(steps):
+    for _ in range(STEPS if len(u) else 0):
         trial = _implicit_step(system, u, mass / step)
         if trial is None:
-            step /= 8.0
-            if step < 1e-9:
+            step, refusals = step / 8.0, refusals - 1
+            if step < 1e-9 or refusals < 0:
                 break
             continue
         still = bool(np.all(np.abs(trial - u) <= 1e-12 * (np.abs(u) + 1e-6)))
         u = trial
         if still and step >= LAST_STEP:
-            return u
+            return u, True
         step = min(step * GROWTH, LAST_STEP)
-    raise _no_rest(system, u, system.residuals(system.values(u)))
+    return u, not len(u)
 
 
 def _implicit_step(system: System, u: FloatArray, inertia: FloatArray) -> FloatArray | None:
@@ -294,14 +300,13 @@ def _undetermined(system: System, u: FloatArray) -> NDArray[np.bool_]:
 
 
 def _look(system: System, begin: FloatArray, found: list[FloatArray]) -> None:
-    """Add the rests that a start leads to, in time and by Newton's method, where they are new and possible."""
-    for step in (LAST_STEP, 1.0):
+    """Add the rests that a start leads to, by Newton's method and in time, where they are new and possible."""
+    for first in (LAST_STEP, 1.0):
         try:
-            with np.errstate(all="ignore"):
-                u = settled(system, begin, step, FEW_STEPS)
-        except (ComputationError, ArithmeticError, ValueError, np.linalg.LinAlgError):
+            u, arrived = _followed(system, begin, first, REFUSALS)
+        except (ArithmeticError, ValueError):  # a start far off may have no value
             continue
-        if _possible(system, u) and not any(_same(system, u, other) for other in found):
+        if arrived and _possible(system, u) and not any(_same(system, u, other) for other in found):
             found.append(u)
 
 
