@@ -13,7 +13,7 @@ from loopsim.language.units import from_si
 from loopsim.model.choice import Source, scenario_sources, source_of
 from loopsim.model.graph import dead_time_in_loop, influences
 from loopsim.model.numbers import System
-from loopsim.model.rest import OperatingPoint, eigenvalues, rest
+from loopsim.model.rest import OperatingPoint, all_rests, eigenvalues, rest
 from loopsim.model.types import Model
 from loopsim.results import Cell, Table
 
@@ -33,50 +33,78 @@ def steady_values(plant: Path, strategies: Sequence[Path] = ()) -> dict[str, flo
     return {name: point.values[model.in_use.get(name, name)] for name in model.signals}
 
 
-def steady(source: Source, points: Sequence[str] = ("",)) -> SteadyReport:
-    """The operating point of a model, at its own values or at named points of its plant."""
+def steady(source: Source, points: Sequence[str] = ("",), every: bool = False) -> SteadyReport:
+    """The operating point of a model, at its own values or at named points of its plant; `every`: other rests too."""
     for name in points:
         if name and name not in source.points:
             raise fail(f"no operating point is called '{name}'", None, nearest(name, source.points, "points"))
-    found = {name: _steady(source, name) for name in points}
-    tables = [table for name, one in found.items() for table in _steady_tables(name or source.name, *one)]
-    if list(points) == [""]:
-        return SteadyReport(tuple(tables), _steady_json(*found[""]))
-    return SteadyReport(tuple(tables), {"points": {name: _steady_json(*one) for name, one in found.items()}})
+    found = {name: _steady(source, name, every) for name in points}
+    tables = tuple(table for name, one in found.items() for table in _steady_tables(name or source.name, one))
+    documents = {name: _steady_json(one, every) for name, one in found.items()}
+    return SteadyReport(tables, documents[""] if list(points) == [""] else {"points": documents})
 
 
-def _steady(source: Source, point: str) -> tuple[Model, OperatingPoint, bool | None]:
-    law, found = source.law(point), source.rested(point)
+@dataclass(frozen=True, slots=True)
+class _Steady:
+    """A law model, where it rests, and whether each of these is stable (None: not told)."""
+
+    model: Model
+    rests: tuple[OperatingPoint, ...]
+    stable: tuple[bool | None, ...]
+
+
+def _steady(source: Source, point: str, every: bool) -> _Steady:
+    law, first = source.law(point), source.rested(point)
+    rests = (first, *all_rests(law)[1:]) if every else (first,)
     timed = source.timed(point=point)
     if dead_time_in_loop(timed, influences(timed)):
-        return law, found, None
-    roots = eigenvalues(System(law), found.values)
-    return law, found, bool(all(root.real < 1e-9 for root in roots))
+        return _Steady(law, rests, (None,) * len(rests))
+    system = System(law)
+    return _Steady(law, rests, tuple(_is_stable(system, one) for one in rests))
 
 
-def _steady_tables(name: str, model: Model, point: OperatingPoint, stable: bool | None) -> list[Table]:
+def _is_stable(system: System, point: OperatingPoint) -> bool:
+    return all(root.real < 1e-9 for root in eigenvalues(system, point.values).tolist())
+
+
+def _steady_tables(name: str, found: _Steady) -> list[Table]:
+    model, first = found.model, found.rests[0]
     rows = []
     for signal, about in model.signals.items():
-        value = point.values.get(model.in_use.get(signal, signal))
-        if value is not None:
-            rows.append((Cell(signal), Cell(f"{from_si(value, about.unit, model.air_pressure):.5g}"),
-                         Cell(about.unit.text), Cell(about.about)))  # fmt: skip
+        flat = model.in_use.get(signal, signal)
+        if flat in first.values:
+            values = [f"{from_si(one.values[flat], about.unit, model.air_pressure):.5g}" for one in found.rests]
+            rows.append(tuple(Cell(text) for text in (signal, *values, about.unit.text, about.about)))
     words = {True: "The point is stable.", False: "The point is NOT stable: left alone, the plant goes away from it.",
              None: "Stability is not told: a dead time lies in a loop, so it is a question for the roots."}  # fmt: skip
-    notes = [one.sentence for one in point.unreached] + [words[stable], *(f"assumed: {one}" for one in model.assumed)]
-    return [Table(f"{name} at rest", ("signal", "value", "unit", ""), tuple(rows), tuple(notes))]
+    notes = [one.sentence for one in first.unreached]
+    notes += [words[found.stable[0]]] if len(found.rests) == 1 else _stabilities(found.stable)
+    notes += [f"assumed: {one}" for one in model.assumed]
+    columns = ("value",) if len(found.rests) == 1 else tuple(f"rest {number + 1}" for number in range(len(found.rests)))
+    return [Table(f"{name} at rest", ("signal", *columns, "unit", ""), tuple(rows), tuple(notes))]
 
 
-def _steady_json(model: Model, point: OperatingPoint, stable: bool | None) -> dict[str, Any]:
+def _stabilities(stable: Sequence[bool | None]) -> list[str]:
+    words = {True: "is stable", False: "is NOT stable", None: "may be stable or not: a dead time lies in a loop"}
+    told = [f"Rest {number} {words[one]}." for number, one in enumerate(stable, 1)]
+    return [*told, "Found by a search from many starts; that there are no more is not proven."]
+
+
+def _steady_json(found: _Steady, every: bool) -> dict[str, Any]:
+    documents = [_rest_json(found.model, *one) for one in zip(found.rests, found.stable, strict=True)]
+    others = {"others": documents[1:]} if every else {}
+    return {**documents[0], **others, "assumed": list(found.model.assumed)}
+
+
+def _rest_json(model: Model, point: OperatingPoint, stable: bool | None) -> dict[str, Any]:
     signals: dict[str, dict[str, Any]] = {}
     for name, about in model.signals.items():
         value = point.values.get(model.in_use.get(name, name))
         if value is not None:
             signals[name] = {"value": from_si(value, about.unit, model.air_pressure), "unit": about.unit.text}
     limits = [_limit(name, one["value"]) for name, one in signals.items() if one["unit"] == "%"]
-    report: dict[str, Any] = {"signals": signals, "stable": stable, "limits": limits}
-    report["unreached"] = [one.sentence for one in point.unreached]
-    return {**report, "assumed": list(model.assumed)}
+    unreached = [one.sentence for one in point.unreached]
+    return {"signals": signals, "stable": stable, "limits": limits, "unreached": unreached}
 
 
 def _limit(name: str, value: float) -> dict[str, Any]:

@@ -6,48 +6,68 @@ import os
 import shutil
 import sys
 import textwrap
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
+from functools import partial
 
 from loopsim.results import Cell, Table
 
 COLOURS = {"good": "36", "bad": "35;1", "open": "33"}
-GAP = "   "
+WIDE_GAP, NARROW_GAP, NARROW = 3, 2, 100
+SMALLEST = 8  # characters that a column keeps however narrow the page is
+
+_wrap = partial(textwrap.wrap, break_on_hyphens=False)  # tags such as TIC-101 stay whole
 
 
 def render(tables: Iterable[Table], width: int | None = None, colour: bool | None = None) -> str:
-    """The tables below each other; colour and width from the terminal unless they are given."""
+    """The tables below each other, lines of `width` characters at most; colour and width from the terminal by default.
+
+    The environment's NO_COLOR takes the colours away.
+    """
     wide = width or (shutil.get_terminal_size((110, 24)).columns if sys.stdout.isatty() else 160)
-    bright = colour if colour is not None else sys.stdout.isatty() and "NO_COLOR" not in os.environ
+    bright = colour if colour is not None else sys.stdout.isatty() and not os.environ.get("NO_COLOR")
     return "\n".join(_table(table, wide, bright) for table in tables if table.rows or table.notes)
 
 
 def _table(table: Table, width: int, colour: bool) -> str:
-    lines = [table.title, "=" * min(len(table.title), width)]
+    title = _clean(table.title)
+    lines = [*_wrap(title, width), "=" * min(len(title), width)]
     if table.rows:
-        widths = _widths(table, width)
-        if any(table.heads):
-            lines += [
-                _row([Cell(head) for head in table.heads], widths, False),
-                "-" * min(sum(widths) + 3 * len(widths) - 3, width),
-            ]
-        lines += [_row(list(row), widths, colour) for row in table.rows]
+        lines += _grid(table, width, colour)
     for note in table.notes:
-        lines += textwrap.wrap(note, width, initial_indent="* ", subsequent_indent="  ")
+        lines += _wrap(_clean(note), width, initial_indent="* ", subsequent_indent="  ")
     return "\n".join(lines) + "\n"
 
 
+def _grid(table: Table, width: int, colour: bool) -> list[str]:
+    """Heads, a rule and the rows; columns that say nothing are left out."""
+    heads = [Cell(_clean(head)) for head in table.heads]
+    rows = [[Cell(_clean(cell.text), cell.tone) for cell in row] for row in table.rows]
+    kept = [place for place in range(len(heads)) if any(row[place].text for row in (heads, *rows))]
+    heads, rows = [heads[place] for place in kept], [[row[place] for place in kept] for row in rows]
+    gap = WIDE_GAP if width >= NARROW else NARROW_GAP
+    widths = _widths([[row[place].text for row in (heads, *rows)] for place in range(len(kept))], width, gap)
+    shown = [_row(row, widths, gap, colour) for row in rows]
+    if not any(head.text for head in heads):
+        return shown
+    return [_row(heads, widths, gap, False), "-" * (sum(widths) + gap * (len(widths) - 1)), *shown]
+
+
+NARROWEST = 36  # characters that the first column keeps while the others can still give way
+
+
 def _widths(table: Table, width: int) -> list[int]:
-    """Column widths that fit; the first column gives way first."""
+    """Column widths that fit: the first column gives way first, then the widest of the others."""
     columns = zip(table.heads, *[[cell.text for cell in row] for row in table.rows], strict=True)
     widths = [max(len(text) for text in column) for column in columns]
-    excess = sum(widths) + len(GAP) * (len(widths) - 1) - width
-    if excess > 0:
-        widths[0] = max(16, widths[0] - excess)
+    room = width - len(GAP) * (len(widths) - 1)
+    widths[0] = max(min(widths[0], NARROWEST), widths[0] - max(sum(widths) - room, 0))
+    while sum(widths) > room and max(widths) > 12:
+        widths[widths.index(max(widths[1:] or widths), min(1, len(widths) - 1))] -= 1
     return widths
 
 
-def _row(cells: list[Cell], widths: list[int], colour: bool) -> str:
-    wrapped = [textwrap.wrap(cell.text, wide) or [""] for cell, wide in zip(cells, widths, strict=True)]
+def _row(cells: Sequence[Cell], widths: Sequence[int], gap: int, colour: bool) -> str:
+    wrapped = [_wrap(cell.text, wide) or [""] for cell, wide in zip(cells, widths, strict=True)]
     lines = []
     for number in range(max(len(parts) for parts in wrapped)):
         parts = []
@@ -55,5 +75,10 @@ def _row(cells: list[Cell], widths: list[int], colour: bool) -> str:
             text = (lines_of[number] if number < len(lines_of) else "").ljust(wide)
             code = COLOURS.get(cell.tone)
             parts.append(f"\x1b[{code}m{text}\x1b[0m" if colour and code else text)
-        lines.append(GAP.join(parts).rstrip())
+        lines.append((" " * gap).join(parts).rstrip())
     return "\n".join(lines)
+
+
+def _clean(text: str) -> str:
+    """A text of the user's without what would steer a terminal."""
+    return "".join(one if one.isprintable() else " " for one in text)
