@@ -52,17 +52,18 @@ def _grid(table: Table, width: int, colour: bool) -> list[str]:
     return [_row(heads, widths, gap, False), "-" * (sum(widths) + gap * (len(widths) - 1)), *shown]
 
 
-NARROWEST = 36  # characters that the first column keeps while the others can still give way
-
-
-def _widths(table: Table, width: int) -> list[int]:
-    """Column widths that fit: the first column gives way first, then the widest of the others."""
-    columns = zip(table.heads, *[[cell.text for cell in row] for row in table.rows], strict=True)
+def _widths(columns: Sequence[Sequence[str]], width: int, gap: int) -> list[int]:
+    """Column widths that fit: the widest gives way first, down to its longest word, and below that only if it must."""
     widths = [max(len(text) for text in column) for column in columns]
-    room = width - len(GAP) * (len(widths) - 1)
-    widths[0] = max(min(widths[0], NARROWEST), widths[0] - max(sum(widths) - room, 0))
-    while sum(widths) > room and max(widths) > 12:
-        widths[widths.index(max(widths[1:] or widths), min(1, len(widths) - 1))] -= 1
+    words = [max((len(word) for text in column for word in text.split()), default=1) for column in columns]
+    excess = sum(widths) + gap * (len(widths) - 1) - width
+    for floors in (words, [min(word, SMALLEST) for word in words]):
+        while excess > 0:
+            loose = [place for place in range(len(widths)) if widths[place] > floors[place]]
+            if not loose:
+                break
+            widths[max(loose, key=lambda place: widths[place])] -= 1
+            excess -= 1
     return widths
 
 
