@@ -181,7 +181,7 @@ CURES = {
     "BTU": "write kJ",
     "hp": "write kW",
 }
-_FACTOR = r"(?:[^\W\d]\w*|%|\0)(?:\s*\^\s*-?\d(?:\.\d+)?)?"
+_FACTOR = r"(?:[^\W\d]\w*|%|\0)(?:\s*\^\s*-?(?:[1-9]|\d\.\d*[1-9]))?"
 _PRODUCT = re.compile(rf"\s*(?:1|{_FACTOR})(?:\s*\*\s*{_FACTOR})*(?:\s*/\s*{_FACTOR})*\s*")
 
 

@@ -23,7 +23,10 @@ def write_pictures(figure: Figure, stem: Path) -> list[Path]:
     from matplotlib.figure import Figure as Drawing
 
     with matplotlib.rc_context({"svg.hashsalt": "loopsim", "font.size": 9.0, "svg.fonttype": "path"}):
-        drawing = Drawing(figsize=(9.0, 0.9 + HEIGHT * len(figure.panels)), layout="constrained")
+        height = 0.9 + HEIGHT * len(figure.panels)
+        drawing = Drawing(figsize=(9.0, height))
+        # fixed margins: room for axis labels, the legend and the marks, without laying out twice
+        drawing.subplots_adjust(left=0.09, right=0.84, bottom=0.5 / height, top=1 - 0.6 / height, hspace=0.14)
         axes = drawing.subplots(len(figure.panels), 1, sharex=True, squeeze=False)[:, 0]
         names = dict.fromkeys(curve.name for panel in figure.panels for curve in panel.curves if not curve.dashed)
         pens = {name: PENS[place % len(PENS)] for place, name in enumerate(sorted(names, key=lambda one: one == ""))}

@@ -3,19 +3,26 @@
 from __future__ import annotations
 
 import os
+import re
 import shutil
 import sys
 import textwrap
 from collections.abc import Iterable, Sequence
-from functools import partial
 
 from loopsim.results import Cell, Table
 
 COLOURS = {"good": "36", "bad": "35;1", "open": "33"}
 WIDE_GAP, NARROW_GAP, NARROW = 3, 2, 100
 SMALLEST = 8  # characters that a column keeps however narrow the page is
+UNIT = r"(?<=\d) (?=\S)"  # the space between a number and what it counts
+JOIN = "\u00a0"  # stands between a number and its unit, which stay together
 
-_wrap = partial(textwrap.wrap, break_on_hyphens=False)  # tags such as TIC-101 stay whole
+
+def _wrap(text: str, width: int, later: str = "", first: str = "") -> list[str]:
+    """Lines of a text; numbers stay with their units, tags such as TIC-101 stay whole."""
+    joined = re.sub(UNIT, JOIN, text)
+    lines = textwrap.wrap(joined, width, initial_indent=first, subsequent_indent=later, break_on_hyphens=False)
+    return [line.replace(JOIN, " ") for line in lines]
 
 
 def render(tables: Iterable[Table], width: int | None = None, colour: bool | None = None) -> str:
@@ -34,7 +41,7 @@ def _table(table: Table, width: int, colour: bool) -> str:
     if table.rows:
         lines += _grid(table, width, colour)
     for note in table.notes:
-        lines += _wrap(_clean(note), width, initial_indent="* ", subsequent_indent="  ")
+        lines += _wrap(_clean(note), width, later="  ", first="* ")
     return "\n".join(lines) + "\n"
 
 
@@ -55,7 +62,10 @@ def _grid(table: Table, width: int, colour: bool) -> list[str]:
 def _widths(columns: Sequence[Sequence[str]], width: int, gap: int) -> list[int]:
     """Column widths that fit: the widest gives way first, down to its longest word, and below that only if it must."""
     widths = [max(len(text) for text in column) for column in columns]
-    words = [max((len(word) for text in column for word in text.split()), default=1) for column in columns]
+    words = [
+        max((len(word) for text in column for word in re.sub(UNIT, JOIN, text).split(" ")), default=1)
+        for column in columns
+    ]
     excess = sum(widths) + gap * (len(widths) - 1) - width
     for floors in (words, [min(word, SMALLEST) for word in words]):
         while excess > 0:

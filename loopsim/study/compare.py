@@ -31,7 +31,7 @@ def compare(judged: Sequence[Judged]) -> Comparison:
     winner, tied, nearest = _ranked(standings)
     reasons = [f"{_names(partial)}: not in every scenario, and left out of the comparison."] if partial else []
     reasons += _results(standings, everywhere, winner, tied, nearest, len(scenarios))
-    best = winner or nearest
+    best = winner or nearest or (tied[0] if tied else None)
     if best is not None and len(everywhere) > 1:
         reasons += _structural(best, everywhere, scenarios)
     reasons += _robustness(everywhere)
