@@ -2,14 +2,19 @@
 
 from __future__ import annotations
 
-from loopsim.documents.types import Balance, Bounds, Formula, Given, Held, Output, Quantity, Word
+import operator
+
+from loopsim.documents.types import Balance, Bounds, Formula, Given, Held, Output, Parameter, Quantity, Word
 from loopsim.language.derivative import simplify
 from loopsim.language.tree import Expression, Name, Number, Operation, names_in
+from loopsim.language.units import from_si
 from loopsim.model.balances import equations, solve_rates
 from loopsim.model.draft import INNER, Absent
 from loopsim.model.givens import Givens
 from loopsim.model.scales import si_value
 from loopsim.model.types import PRIME, Bound, Controller, ScanTask, Signal, State
+
+RELATIONS = {"above": operator.gt, "at_least": operator.ge, "below": operator.lt, "at_most": operator.le}
 
 
 class Elaboration(Givens):
@@ -149,10 +154,41 @@ class Elaboration(Givens):
         self._watch(entry.bounds, flat, entry)
 
     def _watch(self, bounds: Bounds, flat: str, entry: Held | Output) -> None:
-        for relation in ("above", "at_least", "below", "at_most"):
+        for relation in RELATIONS:
             limit = getattr(bounds, relation)
             if isinstance(limit, Quantity | Formula):
                 self.draft.bounds.append(Bound(flat, relation, self.definition(limit), entry.where))
+
+    def check_parameters(self) -> None:
+        """Tell values that lie outside the bounds of their parameter."""
+        for parameter in self.block.parameters:
+            for element in self.elements.of(parameter.key):
+                for end in (".low", ".high") if parameter.pair else ("",):
+                    self._check_bounds(parameter, element, self.flat(element) + end)
+
+    def _check_bounds(self, parameter: Parameter, element: str, flat: str) -> None:
+        value = self.draft.static(Name(flat)) if self.flat(element) not in self.draft.absent else None
+        for relation, kept in RELATIONS.items():
+            bound = getattr(parameter.bounds, relation)
+            if value is None or bound is None:
+                continue
+            limit = self._limit(bound)
+            if limit is None or kept(value, limit):
+                continue
+            given = self.values.get(element, self.values.get(parameter.key.name))
+            unit, air = self.draft.unit(self.flat(element), parameter.where), self.draft.layout.air_pressure
+            shown, wanted = (f"{from_si(one, unit, air):.5g} {unit.text}" for one in (value, limit))
+            self.draft.problems.add(
+                f"'{flat}' is {shown}; it must be {relation.replace('_', ' ')} {wanted}",
+                given.where if given else self.where,
+                parameter.about,
+            )
+
+    def _limit(self, bound: Quantity | Formula) -> float | None:
+        try:
+            return self.draft.static(self.definition(bound))
+        except Absent:  # it is measured against a parameter that this plant leaves out
+            return None
 
     def _note_in_use(self) -> None:
         """An input that answers with a memory is read as that memory: the set point in use."""

@@ -137,7 +137,7 @@ class Analysis:
         if isinstance(tree, Name | Number):
             return tree
         names = names_in(tree)
-        if names and all(self.is_settled(name) for name in names) and not _flaggy(tree):
+        if names and all(self.is_settled(name) for name in names) and not (_flaggy(tree) or switch_numbers(tree)):
             name = self._name_of_settled(tree)
             return Name(name)
         return rebuild(tree, tuple(self.hoisted(part) for part in parts(tree)))

@@ -188,3 +188,24 @@ def test_a_range_twice_as_wide_with_converted_gain_is_the_same(write: Write) -> 
         )
         trends.append(trends_of(folder).columns["lag.y"])
     assert np.abs(trends[0] - trends[1]).max() < 1e-9
+
+
+def test_a_choice_between_constants_is_switched_during_the_run(write: Write) -> None:
+    """A vessel that fills fast and then slowly; source: two straight lines, 2 m at 100 s, then 1 mm/s."""
+    block = (
+        "block: filled\nabout: A vessel filled fast up to a level, then slowly.\nassumes: [upright walls]\n"
+        "parameters:\n  turn: {unit: m, about: where it turns slow}\n  fast: {unit: mm/s, about: rise at first}\n"
+        "  slow: {unit: mm/s, about: rise later}\nstates:\n  h: {unit: m, about: level, start: 0 m}\n"
+        "balances:\n  volume: dh/dt = where(h < turn, fast, slow)\noutputs:\n  h: {unit: m}\n"
+    )
+    plant = (
+        "plant: vessel\nblocks:\n  V-1: {use: filled, turn: 2 m, fast: 20 mm/s, slow: 1 mm/s}\n"
+        "  LT-1: {use: transmitter, lag: 10 s, range: [0 m, 4 m]}\nwires:\n  - V-1.h -> LT-1.x\n"
+    )
+    run = (
+        "scenario: fill\nplant: plant.yaml\nstrategies: {none: []}\nstarts: given\n"
+        "lasts: 200 s\nrecord: {every: 10 s}\n"
+    )
+    trends = trends_of(write({"blocks/filled.yaml": block, "plant.yaml": plant, "fill.yaml": run}), "fill")
+    expected = np.where(trends.time < 100, 0.02 * trends.time, 2 + 0.001 * (trends.time - 100))
+    assert trends.columns["V-1.h"] == pytest.approx(expected, abs=1e-9)
