@@ -43,9 +43,11 @@ def _loop_problem(
     tag, opened = controller.tag, _opened(model, graph, controller)
     gain = slow_gain(model, values, controller.out, controller.pv, opened)
     if gain == 0.0:
+        if controller.pv in reached_from(graph, controller.out):  # a selector may pass another controller just now
+            return None
         return Problem(
             f"the output of {tag} has no effect on its measurement {controller.pv}",
-            "look for a wire that is missing, or a block between that is at its limit",
+            "look for a wire that is missing",
             controller.where,
         )
     slot = model.slots.get(f"{tag}.action")

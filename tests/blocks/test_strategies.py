@@ -64,7 +64,7 @@ def test_override_takes_over_and_gives_back_without_windup(write: Write) -> None
     """Half an hour under the limit: the pressure is held, and the first controller returns with hardly an overshoot."""
     events = ["at: 30 min, step: load, to: 20 %", "at: 60 min, step: load, to: 0 %"]
     files = {"plant.yaml": OVERRIDDEN, "control.yaml": OVERRIDE}
-    files["scenario.yaml"] = scenario(*events, lasts="90 min", starts="given")
+    files["scenario.yaml"] = scenario(*events, lasts="90 min")
     columns = trends_of(write(files)).columns
     before, under = 29 * 60, 59 * 60
     assert columns["least.selected"][[before, under, -1]].tolist() == [1.0, 2.0, 1.0]
