@@ -5,12 +5,16 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from pathlib import Path
 
+import hypothesis
 import pytest
 
 from loopsim.model.choice import Source, scenario_sources, source_of
 from loopsim.results import Trends
 from loopsim.simulation.case import case_of, run_case
 from loopsim.simulation.run import RunResult
+
+hypothesis.settings.register_profile("untimed", deadline=None)  # no test measures time
+hypothesis.settings.load_profile("untimed")
 
 Write = Callable[[Mapping[str, str]], Path]
 

@@ -73,13 +73,13 @@ def mutated(draw: st.DrawFn) -> str:
     return text
 
 
-@settings(max_examples=400, deadline=None, suppress_health_check=[HealthCheck.too_slow])
+@settings(max_examples=400, suppress_health_check=[HealthCheck.too_slow])
 @given(mutated())
 def test_mutated_files(text: str) -> None:
     read(text.encode("utf-8"))
 
 
-@settings(max_examples=200, deadline=None)
+@settings(max_examples=200)
 @given(st.lists(st.sampled_from(PIECES + list("abT12\n :")), max_size=60).map("".join))
 @example("block: a\nparameters: {1: 2}\n")
 def test_random_texts(text: str) -> None:
@@ -87,7 +87,7 @@ def test_random_texts(text: str) -> None:
         read((head + text).encode("utf-8"))
 
 
-@settings(max_examples=200, deadline=None)
+@settings(max_examples=200)
 @given(st.binary(max_size=200))
 def test_random_bytes(raw: bytes) -> None:
     read(raw)
@@ -114,7 +114,7 @@ SECTIONS = {
 
 
 @pytest.mark.parametrize("kind", SECTIONS)
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=150)
 @given(st.data())
 def test_wrong_kinds_of_value(kind: str, data: st.DataObject) -> None:
     """Lists for mappings, mappings for texts, nothing at all, in every section and one and two levels below."""

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import pint
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from loopsim.language.units import UnitError, difference_of, from_si, parse_unit, to_si
+from loopsim.language.units import ALLOWED, UnitError, difference_of, from_si, parse_unit, to_si
 
 # Source: SI brochure (9th edition) for SI units and those accepted with it; NIST Special Publication 811 (2008),
 # appendix B.8, for inch, foot, pound, psi, US gallon; both from memory, digits as printed there.
@@ -50,6 +51,76 @@ def test_strangers_are_refused_with_the_cure(text: str, cure: str) -> None:
     with pytest.raises(UnitError) as caught:
         parse_unit(text)
     assert cure in caught.value.hint
+
+
+@pytest.mark.parametrize(
+    ("text", "cure"),
+    [
+        ("J/kg*K", "J/(kg*K)"),  # SI brochure 5.4: a solidus is not followed by a product without parentheses
+        ("J/kg K", "J/(kg*K)"),
+        ("kJ/kg·K", "kJ/(kg*K)"),
+        ("bar(g)/s", "bar"),
+        ("bar (g)", "bar(g)"),
+        ("kg/h(g)", "join"),
+        ("kPa(a)/s", "kPa"),
+        ("m**3", "m^3"),
+        ("m³/h", "m^3/h"),
+        ("µm", "um"),
+        ("2 m", "join"),
+        ("kg m", "join"),
+        ("m^0", "join"),
+        ("m^200", "join"),
+        ("m^3^2", "join"),
+        ("m^(1/2)", "join"),
+        ("(m", "join"),
+        ("m/-s", "join"),
+        ("W/degF", "K"),
+        ("W/degK", "K"),
+        ("1", "dimensionless"),
+        ("-", "dimensionless"),
+        ("kPag", "kPa(g)"),
+        ("psia", "psi(a)"),
+        ("°C", "degC"),
+        ("percent", "%"),
+        ("x" * 70, ""),
+        ("*".join(["m"] * 40), "60"),
+    ],
+)
+def test_what_can_be_misread_is_refused(text: str, cure: str) -> None:
+    with pytest.raises(UnitError) as caught:
+        parse_unit(text)
+    assert cure in caught.value.hint
+
+
+@pytest.mark.parametrize("text", ["degC", "degF", "bar(g)", "bar(a)", "psi(g)", "kPa(a)"])
+def test_points_stand_alone(text: str) -> None:
+    assert parse_unit(text).point
+    for compound in (f"{text}/s", f"kg/{text}", f"{text}*m"):
+        if text == "degC":
+            assert not parse_unit(compound).point  # there it is a difference
+        else:
+            with pytest.raises(UnitError):
+                parse_unit(compound)
+
+
+@given(st.text(alphabet="mskgKhdLt()*/^.-123 %°²dPabW", max_size=12))
+def test_any_text_is_a_unit_or_refused(text: str) -> None:
+    """No text gets past the list by another way: what is read has a finite factor, and its name is read back alike."""
+    try:
+        unit = parse_unit(text)
+    except UnitError as error:
+        assert error.what
+        return
+    assert 0 < unit.factor < float("inf") and parse_unit(unit.text) == unit
+
+
+def test_the_list_agrees_with_other_definitions() -> None:
+    """Every unit of the list against the definitions that pint ships, none of which we use."""
+    registry = pint.UnitRegistry()
+    named = {"d": "day", "t": "metric_ton", "h": "hour", "gpm": "gallon/minute"}
+    for text in sorted(ALLOWED):
+        theirs = registry.Quantity(1.0, registry.parse_units(named.get(text, text))).to_base_units()
+        assert parse_unit(text).factor == pytest.approx(theirs.magnitude, rel=1e-9), text
 
 
 @given(st.floats(-1e6, 1e6), st.sampled_from([*FACTORS, "degC", "degF", "bar(g)", "kPa(a)"]))

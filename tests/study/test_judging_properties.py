@@ -71,7 +71,7 @@ def clear_of_its_limit(found: Verdict) -> bool:
     return found.value is None or found.limit is None or abs(found.value - found.limit) > 1e-6
 
 
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=150)
 @given(two_signals(), st.sampled_from(RULES), st.sampled_from(WINDOWS), st.lists(st.floats(0.1, 11.9), max_size=6))
 def test_how_a_run_is_cut_does_not_matter(pieces: Pieces, text: str, window: str, cuts: list[float]) -> None:
     judged_rule = rule("{" + text + window + "}")
@@ -89,7 +89,7 @@ def later(judged_rule: Rule, shift: float) -> Rule:
     return replace(judged_rule, after=moved(judged_rule.after), until=moved(judged_rule.until))
 
 
-@settings(max_examples=100, deadline=None)
+@settings(max_examples=100)
 @given(two_signals(), st.sampled_from(RULES), st.sampled_from(WINDOWS), st.sampled_from([1.0, 37.5, 86400.0]))
 def test_when_the_clock_starts_does_not_matter(pieces: Pieces, text: str, window: str, shift: float) -> None:
     judged_rule = rule("{" + text + window + "}")
@@ -119,7 +119,7 @@ def scaled(text: str, factor: float) -> Rule:
     return replace(found, limit=found.limit if timed or share else times(found.limit), of=of, band=times(found.band))
 
 
-@settings(max_examples=100, deadline=None)
+@settings(max_examples=100)
 @given(two_signals(), st.sampled_from(KINDS_OF_SIZE), st.sampled_from([1e-3, 0.5, 1e4]))
 def test_the_scale_of_the_signal_does_not_matter(pieces: Pieces, text: str, factor: float) -> None:
     first = verdict_of(rule("{" + text + "}"), at_once(pieces))
@@ -133,7 +133,7 @@ def test_the_scale_of_the_signal_does_not_matter(pieces: Pieces, text: str, fact
             assert second.margin == pytest.approx(first.margin, rel=1e-6, abs=1e-6)
 
 
-@settings(max_examples=60, deadline=None)
+@settings(max_examples=60)
 @given(two_signals(), st.sampled_from([0.0, 4.0, 330.0]))
 def test_errors_do_not_depend_on_where_the_scale_starts(pieces: Pieces, zero: float) -> None:
     lifted: FloatArray = pieces.samples + zero
@@ -144,7 +144,7 @@ def test_errors_do_not_depend_on_where_the_scale_starts(pieces: Pieces, zero: fl
             same(first, verdict_of(rule("{" + text + "}"), at_once(raised)))
 
 
-@settings(max_examples=60, deadline=None)
+@settings(max_examples=60)
 @given(two_signals(), st.sampled_from(RULES))
 def test_a_wider_limit_is_never_worse(pieces: Pieces, text: str) -> None:
     found = rule("{" + text + "}")
