@@ -34,22 +34,34 @@ class Table:
 
 @dataclass(frozen=True, slots=True)
 class Curve:
-    """One line of a panel. `step`: held between points."""
+    """One line of a panel. `step`: held between points; `dashed`: a set point; `faint`: what noise hides another by."""
 
     name: str
     x: FloatArray
     y: FloatArray
     step: bool = False
     dashed: bool = False
+    faint: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Band:
+    """An area between two lines that a rule asks a signal to stay in; arrays of one shape."""
+
+    name: str
+    x: FloatArray
+    low: FloatArray
+    high: FloatArray
 
 
 @dataclass(frozen=True, slots=True)
 class Panel:
-    """One pair of axes: curves that share a unit, and level lines (limits) with their names."""
+    """One pair of axes: curves that share a unit, level lines (limits) with their names, bands."""
 
     y_label: str
     curves: tuple[Curve, ...]
     levels: tuple[tuple[str, float], ...] = ()
+    bands: tuple[Band, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

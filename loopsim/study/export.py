@@ -129,7 +129,10 @@ def comparison_json(comparison: Comparison) -> Json:
 # ---------------------------------------------------------------- test suites
 @dataclass(frozen=True, slots=True)
 class SuiteCase:
-    """One rule for one strategy: `outcome` is passed, failure (broken or inconclusive) or skipped (does not apply)."""
+    """One rule for one strategy, or (`rule` is `run`) a run that could not be finished.
+
+    `outcome` is passed, failure (broken or inconclusive), skipped (does not apply) or error (not finished).
+    """
 
     strategy: str
     rule: str
@@ -139,19 +142,24 @@ class SuiteCase:
 
 @dataclass(frozen=True, slots=True)
 class Suite:
-    """One scenario: a case for each rule and strategy."""
+    """One scenario: a case for each rule and strategy, and one for each run that could not be finished."""
 
     name: str
     cases: tuple[SuiteCase, ...]
 
 
 def suites(judged: Sequence[Judged]) -> tuple[Suite, ...]:
-    """A suite for each scenario, a case for each rule and strategy, in the order given."""
+    """A suite for each scenario, its cases in the order given."""
     names = dict.fromkeys(one.scenario for one in judged)
     return tuple(
-        Suite(name, tuple(_case(one, verdict) for one in judged if one.scenario == name for verdict in one.verdicts))
-        for name in names
+        Suite(name, tuple(case for one in judged if one.scenario == name for case in _cases(one))) for name in names
     )
+
+
+def _cases(one: Judged) -> list[SuiteCase]:
+    status = one.run.trends.status
+    stopped = [] if status.code == "done" else [SuiteCase(one.run.strategy, "run", "error", status.sentence)]
+    return [*stopped, *(_case(one, verdict) for verdict in one.verdicts)]
 
 
 def _case(one: Judged, verdict: Verdict) -> SuiteCase:
