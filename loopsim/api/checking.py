@@ -5,14 +5,18 @@ from __future__ import annotations
 from collections.abc import Sequence
 from pathlib import Path
 
-from loopsim.documents.load import read_document
-from loopsim.documents.types import Block, Diagram, Scenario
+from loopsim.api.listing import key_text, text
+from loopsim.api.running import time_models
+from loopsim.documents.load import library_around, read_document
+from loopsim.documents.types import Block, Diagram, Scenario, Use
 from loopsim.errors import ComputationError, InputError, Problems, fail
 from loopsim.model.choice import Source, scenario_sources, source_of
+from loopsim.model.types import Model
 from loopsim.simulation.analysis import Wishes
-from loopsim.simulation.case import case_of
+from loopsim.simulation.check_case import run_check
 from loopsim.simulation.generate import generate
 from loopsim.simulation.machine import build
+from loopsim.study.checks import check_scenario
 
 
 def check(paths: Sequence[Path], strategies: Sequence[Path] = ()) -> list[str]:
@@ -47,37 +51,80 @@ def _used_by(path: Path) -> set[Path]:
 def _one(path: Path, strategies: Sequence[Path], problems: Problems) -> list[str]:
     document = read_document(path)
     if isinstance(document, Block):
-        return []
+        return _block(path, document, problems)
     if isinstance(document, Scenario):
         return _scenario(path, problems)
     assert isinstance(document, Diagram)
     if document.kind == "strategy":
         return [f"{path}: a strategy alone; it is checked in full with `loopsim check PLANT --with {path}`"]
-    return _source(source_of(path, strategies))
+    source = source_of(path, strategies)
+    return _notes(source.timed(), source, resting=True)
+
+
+def _block(path: Path, block: Block, problems: Problems) -> list[str]:
+    """A block's `check:` cases are carried out."""
+    agreed = 0
+    for check in block.checks:
+        with problems.collecting():
+            try:
+                value, agrees = run_check(block, check, library_around(path))
+            except ComputationError as error:
+                problems.add(f"the check cannot be carried out: {error.problems[0].what}", check.where)
+                continue
+            agreed += agrees
+            if not agrees:
+                unit = f" {check.expected.unit.text}" if check.expected.unit is not None else ""
+                what = f"the check gives {value:.9g}{unit}, where its source says {check.expected.text}"
+                problems.add(what, check.where, f"within {check.within.text} of it is allowed")
+    return (
+        [f"{path}: {agreed} check{'s agree' if agreed > 1 else ' agrees'} with what the source says"] if agreed else []
+    )
 
 
 def _scenario(path: Path, problems: Problems) -> list[str]:
     scenario, sources = scenario_sources(path)
     notes: list[str] = []
+    models = time_models(scenario, sources)
+    check_scenario(scenario, models, problems)
     for name, source in sources.items():
         with problems.collecting():
-            try:
-                case = case_of(name, scenario, source)
-                notes += [f"{name}: {note}" for note in case.model.notes]
-                notes += [f"{name}: assumed {one}" for one in case.model.assumed]
-            except ComputationError as error:
-                notes.append(f"{name}: {error.problems[0].what}")
+            notes += [f"{name}: {note}" for note in _notes(models[name], source, scenario.starts == "steady")]
     return notes
 
 
-def _source(source: Source) -> list[str]:
-    model = source.timed()
-    notes = [*model.notes, *(f"assumed: {one}" for one in model.assumed)]
+def _notes(model: Model, source: Source, resting: bool) -> list[str]:
+    """What is worth knowing of a model that is in order; signs are audited where it rests."""
+    notes = [*model.notes, *_replaced(source), *(f"assumed: {one}" for one in model.assumed)]
+    if not resting:
+        return notes
     try:
         notes += [one.sentence for one in source.rested().unreached]
     except ComputationError as error:
         notes.append(error.problems[0].what)
     return notes
+
+
+def _replaced(source: Source) -> list[str]:
+    """Where a strategy's wire takes the place of a value or default of a block that is not its own."""
+    notes = []
+    for strategy in source.diagrams:
+        if strategy.kind != "strategy":
+            continue
+        for wire in strategy.wires:
+            tag, _, port = wire.target.partition(".")
+            uses = [one.blocks[tag] for one in source.diagrams if one is not strategy and tag in one.blocks]
+            for old in (old for use in uses if (old := _stood(source, use, port))):
+                notes.append(f"the wire '{wire.source} -> {wire.target}' takes the place of {old}")
+    return notes
+
+
+def _stood(source: Source, use: Use, port: str) -> str:
+    """What stood at an input before a wire: its value or its default; '' for neither."""
+    if port in use.values:
+        return f"the value {text(use.values[port].value)}"
+    inputs = {key_text(one.key): one for one in source.library.block(use.block).inputs}
+    default = inputs[port].default if port in inputs else None
+    return f"the default {text(default)}" if default is not None else ""
 
 
 def generated_text(path: Path, strategies: Sequence[Path] = ()) -> str:

@@ -7,89 +7,220 @@ from typing import Any
 
 from loopsim.documents.library import Library
 from loopsim.documents.types import (
+    Balance,
+    Block,
+    Bounds,
     ByChoice,
     Check,
     Formula,
+    Given,
+    Held,
+    Input,
     Key,
+    Let,
+    Output,
     PairValue,
+    Parameter,
     Quantity,
     UnitSpec,
+    Unknown,
     Word,
 )
 from loopsim.language.write import write
 from loopsim.results import Cell, Table
 
+RELATIONS = ("above", "at_least", "below", "at_most")
+# how the sections are called on a page -> in JSON; the balance first, then what it is checked against
+FORMULAS = {
+    "Balances": "balances",
+    "With": "let",
+    "Solved": "solve",
+    "At each execution": "scan",
+    "Between executions": "continuous",
+}
+ENTRIES = {
+    "Parameters": "parameters",
+    "In": "inputs",
+    "Out": "outputs",
+    "States": "states",
+    "Memories": "memory",
+}
+
 
 def block_table() -> Table:
     """Every block with its family and what it is."""
-    library = Library(Path())
-    rows = []
-    for name in library.names():
-        block = library.block(name)
-        family = library.path(name).parent.name
-        rows.append((family, name, block.about))
-    cells = tuple(tuple(Cell(text) for text in row) for row in sorted(rows))
+    rows = [(one["family"], one["block"], one["about"]) for one in blocks_json()]
+    cells = tuple(tuple(Cell(text) for text in row) for row in rows)
     return Table("Blocks", ("family", "block", "what it is"), cells, ("`loopsim blocks NAME` shows one of them.",))
 
 
-def block_page(name: str) -> list[str]:
-    """One block: what it is, its balance, its checks, parameters, ports, assumptions, sources."""
-    block = Library(Path()).block(name)
-    lines = [block.name, "=" * len(block.name), block.about, ""]
-    lines += _section("Balances", [f"{one.key.name}: {one.text}" for one in block.balances])
-    lines += _section("With", [f"{key_text(one.key)} = {text(one.value)}" for one in block.let])
-    lines += _section("To be solved", [f"{one.key.name}: {one.equation.text}" for one in block.solve])
-    lines += _section("At each scan", [f"{key_text(one.key)} = {text(one.value)}" for one in block.scan])
-    lines += _section("Checked by", [check_text(one) for one in block.checks])
-    lines += _section(
-        "Settings", [_setting(one.name, one.choices, one.default, one.about) for one in block.settings.values()]
-    )
-    lines += _section("Parameters", [_entry(one.key, one.unit, one.about, one.default) for one in block.parameters])
-    lines += _section("In", [_entry(one.key, one.unit, one.about, one.default) for one in block.inputs])
-    lines += _section("Out", [_entry(one.key, one.unit, one.about, None) for one in block.outputs])
-    lines += _section("Faults", [f"{one.name}: {one.about}" for one in block.faults.values()])
-    streams = [f"{one.name}: {', '.join(key_text(key) for key, _ in one.carries)}" for one in block.streams.values()]
-    lines += _section("Streams", streams)
-    lines += _section("Assumes", list(block.assumes))
-    return lines + _section("Sources", list(block.sources))
+def blocks_json() -> list[dict[str, str]]:
+    """The same as data, by family and name."""
+    library = Library(Path())
+    found = [
+        {"family": library.path(name).parent.name, "block": name, "about": library.block(name).about}
+        for name in library.names()
+    ]
+    return sorted(found, key=lambda one: (one["family"], one["block"]))
 
 
+def block_page(name: str) -> list[Table]:
+    """One block: what it is, its balance, its checks, ports and parameters with units, assumptions, sources."""
+    data = block_json(name)
+    tables = [Table(name, (), (), (data["about"],))]
+    tables += [
+        _rows(title, [(key, "=", text) for key, text in data[where].items()]) for title, where in FORMULAS.items()
+    ]
+    tables.append(_rows("Checked against", [_check_row(one) for one in data["checks"]]))
+    tables.append(_rows("Settings", [_setting_row(key, one) for key, one in data["settings"].items()]))
+    for title, where in ENTRIES.items():
+        tables.append(_rows(title, [_entry_row(key, one) for key, one in data[where].items()]))
+    tables.append(_rows("Exactly one of", [(", ".join(names),) for names in data["one_of"]]))
+    for title in ("Faults", "Streams"):
+        tables.append(_rows(title, [(key, text) for key, text in data[title.lower()].items()]))
+    tables.append(_rows("Made of", [(key, one["use"], _given(one["values"])) for key, one in data["blocks"].items()]))
+    tables.append(_rows("Wires", [(one,) for one in data["wires"]]))
+    for title in ("Assumes", "Sources"):
+        tables.append(_rows(title, [(one,) for one in data[title.lower()]]))
+    return tables
+
+
+def _rows(title: str, rows: list[tuple[str, ...]]) -> Table:
+    cells = tuple(tuple(Cell(text) for text in row) for row in rows)
+    return Table(title, ("",) * len(rows[0]) if rows else (), cells)
+
+
+def _check_row(check: dict[str, Any]) -> tuple[str, ...]:
+    return (f"{check['what']} is {check['is']} within {check['within']}", _given(check["given"]), check["source"])
+
+
+def _setting_row(name: str, setting: dict[str, Any]) -> tuple[str, ...]:
+    return name, ", ".join(setting["choices"]), _default(setting), setting["about"]
+
+
+def _entry_row(name: str, entry: dict[str, Any]) -> tuple[str, ...]:
+    extra = [
+        f"{key.replace('_', ' ')} {entry[key]}" for key in (*RELATIONS, "is", "start", "percent_of") if key in entry
+    ]
+    return name, f"[{entry['unit']}]", _default(entry), ", ".join(extra), entry["about"]
+
+
+def _default(entry: dict[str, Any]) -> str:
+    if "default" not in entry:
+        return ""
+    return "may be left out" if entry["default"] is None else f"default {entry['default']}"
+
+
+def _given(values: dict[str, str]) -> str:
+    return ", ".join(f"{name}: {value}" for name, value in values.items())
+
+
+# ---------------------------------------------------------------- as data
 def block_json(name: str) -> dict[str, Any]:
-    """The same as data."""
-    block = Library(Path()).block(name)
+    """A block as data, what `like:` brings carried out; quantities and formulas as text."""
+    library = Library(Path())
+    block = library.block(name)
     return {
         "block": block.name,
+        "family": library.path(name).parent.name,
         "about": block.about,
         "balances": {key_text(one.key): one.text for one in block.balances},
-        "settings": {one.name: list(one.choices) for one in block.settings.values()},
-        "parameters": {key_text(one.key): _port(one.unit, one.about) for one in block.parameters},
-        "inputs": {key_text(one.key): _port(one.unit, one.about) for one in block.inputs},
-        "outputs": {key_text(one.key): _port(one.unit, one.about) for one in block.outputs},
+        "let": _formulas(block.let),
+        "solve": {key_text(one.key): one.equation.text for one in block.solve},
+        "scan": _formulas(block.scan),
+        "continuous": _formulas(block.continuous),
+        "checks": [_check(one) for one in block.checks],
+        "settings": {
+            one.name: {"choices": list(one.choices), **_default_of(one.default, False), "about": one.about}
+            for one in block.settings.values()
+        },
+        "parameters": _entries(block.parameters),
+        "one_of": [list(names) for names in block.one_of],
+        **_ports(block, library),
+        "states": _entries(block.states),
+        "memory": _entries(block.memory),
         "faults": {one.name: one.about for one in block.faults.values()},
+        "streams": {
+            one.name: ", ".join(f"{key_text(carried)}: {key_text(port)}" for carried, port in one.carries)
+            for one in block.streams.values()
+        },
+        "blocks": {one.tag: {"use": one.block, "values": _values(one.values)} for one in block.blocks.values()},
+        "wires": [f"{one.source} -> {one.target}" for one in block.wires],
         "assumes": list(block.assumes),
         "sources": list(block.sources),
-        "checks": [check_text(one) for one in block.checks],
     }
 
 
-def _section(title: str, lines: list[str]) -> list[str]:
-    return [title, *(f"  {line}" for line in lines), ""] if lines else []
+def _ports(block: Block, library: Library) -> dict[str, Any]:
+    """Inputs and outputs; those of a block of blocks are ports inside."""
+    if not block.ports:
+        return {"inputs": _entries(block.inputs), "outputs": _entries(block.outputs)}
+    found: dict[str, dict[str, Any]] = {"inputs": {}, "outputs": {}}
+    for port, inside in block.ports.items():
+        tag, _, name = inside.partition(".")
+        entries = _ports(library.block(block.blocks[tag].block), library)
+        for where, known in found.items():
+            if name in entries[where]:
+                known[port] = {**entries[where][name], "port": inside}
+    return found
 
 
-def _port(unit: UnitSpec, about: str) -> dict[str, str]:
-    return {"unit": unit_text(unit), "about": about}
+def _entries(entries: tuple[Parameter | Input | Output | Held | Unknown, ...]) -> dict[str, Any]:
+    return {key_text(one.key): _entry(one) for one in entries}
 
 
-def _entry(key: Key, unit: UnitSpec, about: str, default: object) -> str:
-    parts = [f"{key_text(key)} [{unit_text(unit)}]", about, f"default {text(default)}" if default is not None else ""]
-    return "  ".join(part for part in parts if part)
+def _entry(entry: Parameter | Input | Output | Held | Unknown) -> dict[str, Any]:
+    found: dict[str, Any] = {"unit": unit_text(entry.unit), "about": entry.about}
+    if isinstance(entry, Parameter):
+        found["unit"] = _parameter_unit(entry)
+    if isinstance(entry, Parameter | Input):
+        found |= _default_of(entry.default, entry.optional)
+    if isinstance(entry, Input) and entry.percent_of:
+        found["percent_of"] = entry.percent_of
+    if isinstance(entry, Output) and entry.value is not None:
+        found["is"] = text(entry.value)
+    if isinstance(entry, Held | Unknown) and entry.start is not None:
+        found["start"] = text(entry.start)
+    bounds = getattr(entry, "bounds", Bounds())
+    return found | {name: text(getattr(bounds, name)) for name in RELATIONS if getattr(bounds, name) is not None}
 
 
-def _setting(name: str, choices: tuple[str, ...], default: object, about: str) -> str:
-    parts = [f"{name}: {', '.join(choices)}", f"default {text(default)}" if default is not None else "", about]
-    return "  ".join(part for part in parts if part)
+def _parameter_unit(entry: Parameter) -> str:
+    if entry.table is not None:
+        return f"{entry.table[1].text} by {entry.table[0].text}"
+    if entry.names is not None:
+        return "names"
+    return f"two of {unit_text(entry.unit)}" if entry.pair else unit_text(entry.unit)
 
 
+def _default_of(default: object, optional: bool) -> dict[str, Any]:
+    if default is None:
+        return {"default": None} if optional else {}
+    return {"default": text(default)}
+
+
+def _formulas(entries: tuple[Let | Balance, ...]) -> dict[str, str]:
+    return {key_text(one.key): one.text if isinstance(one, Balance) else text(one.value) for one in entries}
+
+
+def _values(values: dict[str, Given]) -> dict[str, str]:
+    return {name: text(one.value) for name, one in values.items()}
+
+
+def _check(check: Check) -> dict[str, Any]:
+    if check.gain is not None:
+        what = f"gain from {check.gain[0]} to {check.gain[1]}"
+    elif check.time_constant is not None:
+        what = f"time constant from {check.time_constant[0]} to {check.time_constant[1]}"
+    elif check.after is not None:
+        what = f"{check.after[1]} after {check.after[0].text}"
+    else:
+        what = f"{check.at} at rest"
+    asked = {"what": what, "is": check.expected.text, "within": check.within.text}
+    return {**asked, "given": _values(check.given), "source": check.source}
+
+
+# ---------------------------------------------------------------- as text
 def key_text(key: Key) -> str:
     """A key as it is written."""
     if key.index is None:
@@ -102,17 +233,15 @@ def key_text(key: Key) -> str:
 def unit_text(unit: UnitSpec) -> str:
     """A unit as it is written."""
     if isinstance(unit, ByChoice):
-        options = [
-            f"{choice}: {unit_text(one)}"
-            for choice, one in unit.options.items()
-            if not isinstance(one, Formula | Quantity)
-        ]
-        return f"by {unit.setting} - {', '.join(options)}"
+        options = {
+            choice: unit_text(one) for choice, one in unit.options.items() if not isinstance(one, Formula | Quantity)
+        }
+        return _by_choice(unit.setting, options)
     return unit.text
 
 
 def text(value: object) -> str:
-    """A definition as a line."""
+    """A definition or a value as it is written."""
     if isinstance(value, Quantity | Word):
         return value.text
     if isinstance(value, Formula):
@@ -120,19 +249,9 @@ def text(value: object) -> str:
     if isinstance(value, PairValue):
         return f"[{text(value.low)}, {text(value.high)}]"
     if isinstance(value, ByChoice):
-        return f"by {value.setting} - " + ", ".join(f"{choice}: {text(one)}" for choice, one in value.options.items())
+        return _by_choice(value.setting, {choice: text(one) for choice, one in value.options.items()})
     return str(getattr(value, "text", value))
 
 
-def check_text(check: Check) -> str:
-    """A check as a sentence."""
-    given = ", ".join(f"{name} {text(one.value)}" for name, one in check.given.items())
-    if check.gain is not None:
-        asked = f"gain {check.gain[0]} to {check.gain[1]}"
-    elif check.time_constant is not None:
-        asked = f"time constant {check.time_constant[0]} to {check.time_constant[1]}"
-    elif check.after is not None:
-        asked = f"{check.after[1]} after {check.after[0].text}"
-    else:
-        asked = f"{check.at} at rest"
-    return f"{asked} is {check.expected.text} within {check.within.text}, with {given} ({check.source})"
+def _by_choice(setting: str, options: dict[str, str]) -> str:
+    return f"{{by: {setting}, " + ", ".join(f"{choice}: {one}" for choice, one in options.items()) + "}"

@@ -4,18 +4,20 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Mapping, Sequence
+from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 from loopsim import __version__
 from loopsim.documents.types import Scenario
-from loopsim.errors import ComputationError, Problems, fail
-from loopsim.language.units import Unit
+from loopsim.errors import ComputationError, InputError, Problems, fail
 from loopsim.model.choice import Source, scenario_sources
+from loopsim.model.types import Model
 from loopsim.results import Table, Trends
+from loopsim.simulation.actions import free_names
 from loopsim.simulation.case import Case, case_of, compile_ahead, run_case
-from loopsim.study.checks import check_rules
+from loopsim.study.checks import check_scenario
 from loopsim.study.compare import compare
 from loopsim.study.export import comparison_json, to_json
 from loopsim.study.judge import judge
@@ -72,6 +74,8 @@ def run(paths: Sequence[Path], strategy: str = "", point: str = "", native: bool
     Raises `InputError`; a strategy that cannot be computed is told in its column, and the others go on.
     """
     plans = [(path, *scenario_sources(path, strategy)) for path in scenario_files(paths)]
+    for path, scenario, sources in plans:
+        _check(path, scenario, sources, point)
     # what any of the scenarios judges is kept in all of them, so that they share one program
     names = dict.fromkeys(name for _, scenario, _ in plans for name in rule_names(scenario))
     judgements = [
@@ -82,6 +86,14 @@ def run(paths: Sequence[Path], strategy: str = "", point: str = "", native: bool
     several = any(len(one.strategies) > 1 for one in judgements)
     comparison = compare(every) if several and any(one.verdicts for one in every) else None
     return RunReport(tuple(judgements), comparison, _status(judgements))
+
+
+def _check(path: Path, scenario: Scenario, sources: Mapping[str, Source], point: str) -> None:
+    """Events and rules that no strategy can follow are told before anything runs."""
+    problems = Problems()
+    models = {**time_models(scenario, sources, point), **_other_models(path, scenario, sources, point)}
+    check_scenario(scenario, models, problems)
+    problems.raise_if_any()
 
 
 def _status(judgements: Sequence[Judgement]) -> int:
@@ -122,7 +134,6 @@ def _judged(
             except ComputationError as error:
                 failures[name] = f"{error.problems[0].what}; {error.problems[0].hint}"
     problems.raise_if_any()
-    _check_rules(scenario, cases)
     wanted = {name: (*names, *names_to_judge(case)) for name, case in cases.items()}
     if native:
         compile_ahead([(case, wanted[name]) for name, case in cases.items()])
@@ -140,20 +151,24 @@ def _judged(
     )
 
 
-def _check_rules(scenario: Scenario, cases: Mapping[str, Case]) -> None:
-    """A rule that speaks of what no strategy has, or in a wrong unit, is told before anything runs."""
-    if not cases:
-        return
-    units: dict[str, Unit] = {}
-    loops = set[str]()
-    for case in cases.values():
-        units.update({name: signal.unit for name, signal in case.model.signals.items()})
-        for items in (case.model.states, case.model.memory, case.model.slots):
-            units.update({name: one.unit for name, one in items.items()})
-        loops |= {one.tag for one in case.model.controllers}
-    problems = Problems()
-    check_rules(scenario.accept, units, frozenset(loops), problems, next(iter(cases.values())).model.air_pressure)
+def time_models(scenario: Scenario, sources: Mapping[str, Source], point: str = "") -> dict[str, Model]:
+    """What is simulated for each strategy. Raises `InputError` with the problems of all of them."""
+    problems, models = Problems(), dict[str, Model]()
+    for name, source in sources.items():
+        with problems.collecting():
+            models[name] = source.timed(free_names(scenario.events, source.law(point)), point)
     problems.raise_if_any()
+    return models
+
+
+def _other_models(path: Path, scenario: Scenario, sources: Mapping[str, Source], point: str) -> dict[str, Model]:
+    """Strategies that are not run now may have what a rule or an event speaks of; their own mistakes wait."""
+    models: dict[str, Model] = {}
+    for name in scenario.strategies:
+        if name not in sources:
+            with suppress(InputError):
+                models |= time_models(scenario, scenario_sources(path, name)[1], point)
+    return models
 
 
 def run_id(path: Path, scenario: Scenario) -> str:

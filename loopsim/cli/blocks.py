@@ -14,13 +14,8 @@ from loopsim.output.text import render
 @click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output.")
 def command(name: str, as_json: bool) -> int:
     """List the library, or show the block NAME: balance, checks, ports, assumptions, sources."""
-    if name:
-        click.echo(json_text(api.block_json(name)) if as_json else "\n".join(api.block_page(name)))
-        return 0
-    table = api.block_table()
     if as_json:
-        rows = [[cell.text for cell in row] for row in table.rows]
-        click.echo(json_text({"blocks": [dict(zip(("family", "block", "about"), row, strict=True)) for row in rows]}))
+        click.echo(json_text(api.block_json(name) if name else {"blocks": api.blocks_json()}))
     else:
-        click.echo(render([table]))
+        click.echo(render(api.block_page(name) if name else [api.block_table()]))
     return 0

@@ -18,10 +18,11 @@ from loopsim.output.json_text import json_text
 def command(files: tuple[Path, ...], strategies: tuple[Path, ...], code: bool, as_json: bool) -> int:
     """Read and check FILES of any kind together; print what is wrong, all of it, or `ok`."""
     notes = api.check(files, strategies)
-    if code:
-        click.echo("\n".join(api.generated_text(path, strategies) for path in files))
-    elif as_json:
-        click.echo(json_text({"errors": [], "notes": notes}))
+    texts = {str(path): api.generated_text(path, strategies) for path in files} if code else {}
+    if as_json:
+        click.echo(json_text({"errors": [], "notes": notes, **({"code": texts} if code else {})}))
+    elif code:
+        click.echo("\n".join(texts.values()))
     else:
         for note in notes:
             click.echo(note)

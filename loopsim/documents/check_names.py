@@ -4,7 +4,18 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from loopsim.documents.namespace import KNOWN, Member, Names, Text, choices_in, entries_with_unit, near, shown, texts_of
+from loopsim.documents.namespace import (
+    KNOWN,
+    Member,
+    Names,
+    Text,
+    choices_in,
+    entries_with_unit,
+    inside,
+    near,
+    shown,
+    texts_of,
+)
 from loopsim.documents.types import Block, ByChoice, Key, Output, Parameter
 from loopsim.errors import Problems
 from loopsim.language.functions import CONSTANTS, FUNCTIONS
@@ -80,12 +91,7 @@ def _clash(one: Member, other: Member, names: Names) -> bool:
     if one.key == other.key:
         return True
     single = [key.index for key in (one.key, other.key) if not names.generic(key)]
-    return len(single) == 1 and single[0] is not None and names.has(one.key.name, single[0]) and _inside(single[0])
-
-
-def _inside(index: Index) -> bool:
-    """Whether an index means one of the counted elements: `[1]`, `[n]`, `[n-1]`, not `[0]` or `[n+1]`."""
-    return index.offset >= 1 if index.base is None else index.offset <= 0
+    return len(single) == 1 and single[0] is not None and names.has(one.key.name, single[0]) and inside(single[0])
 
 
 def _check_key(key: Key, member: Member, names: Names, problems: Problems) -> None:
@@ -101,8 +107,6 @@ def _check_key(key: Key, member: Member, names: Names, problems: Problems) -> No
     elif index.base not in (None, names.letter, names.over) and index.base not in (names.listed or ()):
         known = [names.letter, names.over, *(names.listed or ())]
         problems.add(f"{own}: there is no index '{index.base}'", member.where, near(str(index.base), known, "indices"))
-    elif member.section in ("memory", "scan", "continuous", "unknown") and not names.generic(key):
-        problems.add(f"{own} stands alone", member.where, f"write {key.name}[{names.letter}] for all elements")
 
 
 def _all_choices(block: Block) -> Iterator[ByChoice]:

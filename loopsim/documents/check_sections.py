@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from loopsim.documents.namespace import Names, column_of, formulas_in, moving, near, shown, texts_of
-from loopsim.documents.types import Block, Formula, PairValue, Parameter, UnitText
-from loopsim.errors import Problems
+from loopsim.documents.types import Block, Formula, PairValue, Parameter, UnitText, Word
+from loopsim.errors import Problems, Where
 from loopsim.language.functions import CONSTANTS
 from loopsim.language.tree import Call, Expression, Name, Number, Operation, walk
 from loopsim.language.write import shortened, write
@@ -148,15 +148,21 @@ def _inside(block: Block, names: Names, problems: Problems) -> None:
 
 
 def _values(block: Block, names: Names, problems: Problems) -> None:
-    """Formulas handed to inner blocks use the outer block's parameters."""
+    """What is handed to inner blocks are the outer block's parameters and settings."""
+    known = [*(one.key.name for one in block.parameters), *block.settings]
     for use in block.blocks.values():
-        for given in use.values.values():
-            for formula in formulas_in(given.value):
-                for node in walk(formula.tree):
-                    stem = node.name.partition(".")[0] if isinstance(node, Name) else ""
-                    if stem and stem not in CONSTANTS and not names.sections(stem) & STILL:
-                        known = [one.key.name for one in block.parameters]
-                        where = column_of(formula.where, node.at)
-                        problems.add(
-                            f"'{stem}' is not a parameter of this block", where, near(stem, known, "parameters")
-                        )
+        for key, given in use.values.items():
+            for name, where in _handed_on(key, given.value):
+                if name not in CONSTANTS and not names.sections(name) & STILL:
+                    what = f"'{name}' is not a parameter of this block"
+                    problems.add(what, where, near(name, known, "parameters"))
+
+
+def _handed_on(key: str, value: object) -> Iterator[tuple[str, Where]]:
+    """Names of the outer block in a value; a lone word may also be a choice, unless it is the key's own name."""
+    if isinstance(value, Word) and value.text == key:
+        yield key, value.where
+    for formula in formulas_in(value):
+        for node in walk(formula.tree):
+            if isinstance(node, Name):
+                yield node.name.partition(".")[0], column_of(formula.where, node.at)

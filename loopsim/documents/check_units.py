@@ -28,7 +28,7 @@ from loopsim.documents.types import (
 )
 from loopsim.errors import Problems, Where
 from loopsim.language.dimensions import Dimension
-from loopsim.language.kinds import BY_FACTOR, ON_OFF, ZERO, Curve, Kind, OnOff, Words, describe, place, same
+from loopsim.language.kinds import BY_FACTOR, ON_OFF, SECOND, ZERO, Curve, Kind, OnOff, Words, describe, place, same
 from loopsim.language.units import Unit, difference_of
 from loopsim.language.write import shortened
 
@@ -77,49 +77,51 @@ class _Units:
     def check(self, reached: frozenset[Key]) -> None:
         """All entries."""
         for member in self.names.members:
-            match member.entry:
-                case Parameter() if member.entry.table is not None:
-                    self._table(member.entry)
-                case Parameter() if member.entry.names is None:
-                    self._entry(member, member.entry.default, "default", member.entry.bounds)
-                case Input():
-                    self._entry(member, member.entry.default, "default", Bounds())
-                    self._answers(member, member.entry)
-                case Held():
-                    self._entry(member, member.entry.start, "start", member.entry.bounds)
-                case Unknown():
-                    self._entry(member, member.entry.start, "start", Bounds())
-                    self._entry(member, member.entry.between, "range", Bounds())
-                    self._balance(member.entry.equation)
-                case Output():
-                    self._output(member, member.entry)
-                case Let():
-                    self._assigned(member, member.entry)
-                case Balance():
-                    self._balance(member.entry)
+            self._member(member)
         for balance in self.block.balances:
             self._balance(balance)
         for name in self.names:
-            members = self.names.of(name)
-            self._elements([one for one in members if self.names.generic(one.key)][:1], members, reached)
+            generic = next((one for one in self.names.of(name) if self.names.generic(one.key)), None)
+            for member in self.names.of(name):
+                if generic is not None and member.key in reached:
+                    self._element(generic, member)
 
-    def _elements(self, generic: list[Member], members: list[Member], reached: frozenset[Key]) -> None:
+    def _element(self, generic: Member, single: Member) -> None:
         """A single element that formulas reach as one of all is of the same kind as they are."""
-        for first in generic:
-            for member in members:
-                if member.key not in reached:
-                    continue
-                try:
-                    kinds = [self.kinds.member(one) for one in (first, member)]
-                except Untold:
-                    continue
-                if not same(kinds[0].kind, kinds[1].kind) or {one.point for one in kinds} == {True, False}:
-                    pairs = zip((first, member), kinds, strict=True)
-                    texts = [f"'{shown(one.key)}' is {_told(kind)}" for one, kind in pairs]
-                    hint = "formulas read both as elements of one name"
-                    self.problems.add(f"{texts[0]} but {texts[1]}", member.where, hint)
+        try:
+            one, other = self.kinds.member(generic), self.kinds.member(single)
+        except Untold:
+            return
+        if not same(one.kind, other.kind) or {one.point, other.point} == {True, False}:
+            what = f"'{shown(generic.key)}' is {_told(one)} but '{shown(single.key)}' is {_told(other)}"
+            self.problems.add(what, single.where, "formulas read both as elements of one name")
 
     # ------------------------------------------------------------ entries
+    def _member(self, member: Member) -> None:
+        entry = member.entry
+        match entry:
+            case Parameter() if entry.table is not None:
+                self._table(entry)
+            case Parameter() if entry.names is None:
+                self._entry(member, entry.default, "default", entry.bounds)
+                self._time(member, entry)
+            case Input():
+                self._entry(member, entry.default, "default", Bounds())
+                self._answers(member, entry)
+                self._percent(member, entry)
+            case Held():
+                self._entry(member, entry.start, "start", entry.bounds)
+            case Unknown():
+                self._entry(member, entry.start, "start", Bounds())
+                self._entry(member, entry.between, "range", Bounds())
+                self._balance(entry.equation)
+            case Output():
+                self._output(member, entry)
+            case Let():
+                self._assigned(member, entry)
+            case Balance():
+                self._balance(entry)
+
     def _entry(self, member: Member, value: Value | None, what: str, bounds: Bounds) -> None:
         scale = self._scale(member)
         if scale is None:
@@ -137,6 +139,22 @@ class _Units:
             return self.kinds.scale(member)
         except Untold:
             return None
+
+    def _time(self, member: Member, entry: Parameter) -> None:
+        """`scan` and `phase` are times where the block has a scan."""
+        scale = self._scale(member)
+        if self.block.scan and member.key.name in ("scan", "phase") and scale is not None and scale.kind != SECOND:
+            what = f"'{member.key.name}' is {describe(scale.kind)}, a time is wanted: it says when the scan is executed"
+            self.problems.add(what, entry.where, "write unit: s")
+
+    def _percent(self, member: Member, entry: Input) -> None:
+        """`percent_of` names a range in the input's own unit."""
+        own = self._scale(member)
+        for pair in self.names.of(entry.percent_of, "parameter"):
+            span = self._scale(pair)
+            if own is not None and span is not None and own.kind != span.kind:
+                what = f"'{member.key.name}' is in {own.text} but its range '{pair.key.name}' is in {span.text}"
+                self.problems.add(what, entry.where, "give both one unit")
 
     def _answers(self, member: Member, entry: Input) -> None:
         scale = self._scale(member)

@@ -63,8 +63,8 @@ class Text:
 
 def column_of(where: Where, column: int) -> Where:
     """The place of a column of a text, from 0; the text's beginning where it runs over several lines."""
-    inside = not where.text or where.column - 1 + column < len(where.text)
-    return where.shifted(column) if inside else where
+    on_the_line = not where.text or where.column - 1 + column < len(where.text)
+    return where.shifted(column) if on_the_line else where
 
 
 class Names:
@@ -100,14 +100,18 @@ class Names:
     def has(self, name: str, index: Index) -> bool:
         """Whether an element is there, named by a number or from the count: `T[0]`, `T[2]`, `T[n]`, `T[n+1]`."""
         keys = [one.key for one in self.of(name)]
-        inside = index.offset >= 1 if index.base is None else index.offset <= 0
-        return Key(name, index) in keys or (inside and any(self.generic(key) for key in keys))
+        return Key(name, index) in keys or (inside(index) and any(self.generic(key) for key in keys))
 
     @property
     def listed(self) -> tuple[str, ...] | None:
         """The names that the repeat runs over, as far as the block names them; None where it counts."""
         parameters = [one.entry for one in self.of(self.over, "parameter")]
         return next((one.names for one in parameters if isinstance(one, Parameter)), None)
+
+
+def inside(index: Index) -> bool:
+    """Whether an index means one of the counted elements: `[1]`, `[n]`, `[n-1]`, not `[0]` or `[n+1]`."""
+    return index.offset >= 1 if index.base is None else index.offset <= 0
 
 
 def entries_with_unit(block: Block) -> Iterator[Ported]:

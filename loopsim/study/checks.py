@@ -1,14 +1,17 @@
-"""Rules checked against the signals before anything runs: names, and the unit of every limit."""
+"""A scenario checked before anything runs: what its events address and to what, the names and units of its rules."""
 
 from __future__ import annotations
 
 from collections.abc import Collection, Mapping, Sequence
 
-from loopsim.documents.types import Quantity, Rule
+from loopsim.documents.types import Event, Quantity, Rule, Scenario
 from loopsim.errors import Problems, nearest
 from loopsim.language.dimensions import Dimension
 from loopsim.language.units import ATMOSPHERE, Unit, difference_of, parse_unit
 from loopsim.model.scales import si_value
+from loopsim.model.types import Model
+from loopsim.simulation.actions import Actions, check_target, not_applicable
+from loopsim.simulation.conditions import conditions_of
 from loopsim.study.rules import per_step
 
 # what the limit of a kind is, on the scale of its signal (kinds left out: a time or a plain number, checked on reading)
@@ -23,6 +26,39 @@ SCALES = {
     "iae": "times time",
     "rate": "per time",
 }
+
+
+def check_scenario(scenario: Scenario, models: Mapping[str, Model], problems: Problems) -> None:
+    """Note what is wrong with the events and rules of a scenario; `models`: what is simulated for each strategy."""
+    if not models:
+        return
+    for number, event in enumerate(scenario.events):
+        _check_event(scenario, number, event, models, problems)
+    for model in models.values():
+        with problems.collecting():
+            conditions_of(model, scenario, {k for k, one in enumerate(scenario.events) if not_applicable(one, model)})
+    units: dict[str, Unit] = {}
+    for model in models.values():
+        units.update({name: signal.unit for name, signal in model.signals.items()})
+        for items in (model.states, model.memory, model.slots):
+            units.update({name: one.unit for name, one in items.items()})
+    loops = {one.tag for model in models.values() for one in model.controllers}
+    check_rules(scenario.accept, units, loops, problems, next(iter(models.values())).air_pressure)
+
+
+def _check_event(
+    scenario: Scenario, number: int, event: Event, models: Mapping[str, Model], problems: Problems
+) -> None:
+    """An event must do something in one strategy at least, and be possible wherever what it addresses is there."""
+    having = [model for model in models.values() if not not_applicable(event, model)]
+    if not having:
+        tag = event.target if event.kind in ("mode", "fault") else event.target.rpartition(".")[0]
+        tags = {one.tag for model in models.values() for one in model.signals.values() if one.tag}
+        problems.add(f"no strategy has a block '{tag}'", event.where, nearest(tag, tags, "tags"))
+    for model in having:
+        if check_target(event, model, problems):
+            with problems.collecting():
+                Actions(model, scenario.events).of(number, 0.0)
 
 
 def check_rules(

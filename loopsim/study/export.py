@@ -60,6 +60,8 @@ def _strategy(one: Judged, trend: str | None) -> Json:
         },
         "events_not_applicable": list(one.run.skipped),
         "assumed": list(one.run.trends.assumed),
+        "remarks": list(one.run.remarks),
+        "log": [{"at_s": float(each.time), "what": each.text} for each in one.run.trends.log],
     }
 
 

@@ -59,6 +59,7 @@ def run_of(
         computing=frozenset(computing),
         margins=margins,
         air_pressure=model.air_pressure,
+        remarks=tuple(one.sentence for one in case.point.unreached) if case.point is not None else (),
     )
 
 

@@ -20,6 +20,7 @@ from loopsim.study.words import clock, rounded, shown
 
 TONES = {PASSED: "good", FAILED: "bad", INCONCLUSIVE: "open"}
 DASH = Cell("–")
+TOLD = 6  # entries of a log in a table; JSON has all of them
 
 
 # ---------------------------------------------------------------- verdicts
@@ -81,8 +82,20 @@ def _notes(judged: Sequence[Judged]) -> list[str]:
         status = one.run.trends.status
         if status.code != "done":
             notes.append(f"{name}: the run stopped at {clock(status.time)}: {status.sentence}")
+        notes += [f"{name}: at the start {remark}" for remark in one.run.remarks]
+        notes += _told(one)
     notes += [f"assumed: {text}" for one in judged for text in one.run.trends.assumed]
     return list(dict.fromkeys(notes))
+
+
+def _told(one: Judged) -> list[str]:
+    """What the run's log tells beside the events: a tank that empties, an alarm; the first few."""
+    events = {(happening.time, happening.target) for happening in one.run.happenings}
+    told = [
+        f"{each.text} at {clock(each.time)}" for each in one.run.trends.log if (each.time, each.block) not in events
+    ]
+    more = [f"and {len(told) - TOLD} more"] if len(told) > TOLD else []
+    return [f"{one.run.strategy}: {'; '.join([*told[:TOLD], *more])}"] if told else []
 
 
 # ---------------------------------------------------------------- figures

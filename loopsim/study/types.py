@@ -70,7 +70,8 @@ class Run:
     loops that rules speak of and this strategy lacks; `skipped` the events that do not apply, as text.
     `spans`: signal -> width of its measuring range [SI]. `graph`: an edge from each signal to those that depend on it;
     nodes have the tag of their `block` ('' for a boundary value). `computing`: tags of blocks that only compute
-    (feedforward, summing, …). `margins` is None where the linear side was not asked.
+    (feedforward, summing, …). `margins` is None where the linear side was not asked. `remarks` are sentences on how the
+    run starts, such as a set point out of reach.
     """
 
     strategy: str
@@ -86,6 +87,7 @@ class Run:
     computing: frozenset[str] = frozenset()
     margins: Mapping[str, LoopMargins] | None = None
     air_pressure: float = ATMOSPHERE
+    remarks: tuple[str, ...] = ()
 
 
 def not_run(strategy: str, sentence: str, lasts: float) -> Run:

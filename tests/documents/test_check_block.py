@@ -232,6 +232,20 @@ def test_scans_and_settings(tmp_path: Path, old: str, new: str, expected: str | 
             "'stuck' is an input already; it cannot be a fault too",
         ),
         ("faults: {bias: {about: x}}\nparameters: {bias: {unit: s}}", None),
+        ("blocks: {A: {use: pid, scan: scan}}", "'scan' is not a parameter of this block"),
+        (
+            "blocks: {A: {use: pid, gain: 2*gian}}\nparameters: {gain: {unit: s}}",
+            "'gian' is not a parameter of this block",
+        ),
+        ("parameters: {scan: {unit: m}}\nscan: {x: 1}", "'scan' is m, a time is wanted"),
+        (
+            "parameters: {span: {unit: degC, pair: true}}\ninputs: {u: {unit: bar, percent_of: span}}",
+            "'u' is in bar but its range 'span' is in degC",
+        ),
+        (
+            "states: {a: {unit: s, start: b}, b: {unit: s, start: 2*a}}\nbalances: {a: a*da/dt = b, b: b*db/dt = a}",
+            "these depend on each other in a circle: a -> b -> a",
+        ),
         ("blocks: {A: {use: pid, gain: k}}\nlet: {x: 1}", "a block made of blocks has no let of its own"),
         ("blocks: {A: {use: pid}}\nwires: [B.x -> A.pv]", "'B.x': there is no block of that tag inside"),
         ("blocks: {A: {use: pid}}\nports: {x: B.x}", "the port 'x' leads to 'B.x', which is not inside"),
@@ -240,6 +254,22 @@ def test_scans_and_settings(tmp_path: Path, old: str, new: str, expected: str | 
 def test_sections(tmp_path: Path, text: str, expected: str | None) -> None:
     found = problems(tmp_path, text)
     assert found == [] if expected is None else any(expected in one for one in found), found
+
+
+@pytest.mark.parametrize(
+    ("second", "circle"),
+    [
+        ("{by: form, one: p, two: a}", False),  # a needs b with one, b needs a with two: never both
+        ("{by: form, one: a, two: p}", True),
+        ("where(form == one, p, a)", False),
+        ("where(form == two, p, a)", True),
+        ("where(given(p), p, a)", False),  # which branch holds is known only in a plant
+    ],
+)
+def test_a_circle_that_no_choice_closes_is_none(tmp_path: Path, second: str, circle: bool) -> None:
+    text = "settings: {form: {choices: [one, two]}}\nparameters: {p: {unit: s, default: none}}\n"
+    text += f"let:\n  a: {{by: form, one: b, two: p}}\n  b: {second}\n"
+    assert any("in a circle: a -> b -> a" in one for one in problems(tmp_path, text)) == circle
 
 
 def test_all_is_told_together(tmp_path: Path) -> None:
