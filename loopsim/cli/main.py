@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import importlib
-import os
 import sys
 import traceback
 from typing import Any
@@ -68,8 +67,7 @@ def status_of(arguments: list[str] | None = None) -> int:
         return 130
     except KeyboardInterrupt:
         return 130
-    except BrokenPipeError:
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    except SystemExit:  # click leaves so when the reader of a pipe has gone, which is no fault
         return 0
     except Exception as error:
         return _told(error, "--json" in words)
