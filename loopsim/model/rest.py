@@ -22,6 +22,7 @@ NEWTON = 12
 GROWTH = 3.0  # of one step to the next
 LAST_STEP = 1e13  # s: from here on a step is Newton's method on the rates
 FARTHEST = 100.0  # times full output: beyond that the output has no hold on the measurement worth a number
+NO_REST = "balance what comes in and goes out, or start the scenario with `starts: given`"
 NO_LIMIT = 1e9  # controller limits when asking what would be needed
 SHARES = (0.0, 0.3, 2.0, 4.0)  # of what a state is at rest: where a search for further rests starts
 KELVIN_SHARES = (0.9, 1.1, 1.2, 1.3)  # the same for a scale that starts far below its daily use
@@ -101,7 +102,27 @@ def settled(system: System, u: FloatArray, first: float = 1.0) -> FloatArray:
     u, arrived = _followed(system, u, first, STEPS)
     if not arrived:
         raise _no_rest(system, u, system.residuals(system.values(u)))
+    creeping = _creeping(system, u)
+    if creeping:
+        raise _switching(system, creeping)
     return u
+
+
+def _creeping(system: System, u: FloatArray) -> str:
+    """A memory that is not yet what its own execution makes of it, and would end the rest if it were; '' for none.
+
+    An on/off memory that ought to be off comes ever nearer to 0 and stays on all the way.
+    """
+    mapped = [place for place, name in enumerate(system.unknowns[: system.states]) if system.model.states[name].mapped]
+    if not mapped:
+        return ""
+    executed = u.copy()
+    executed[mapped] += system.residuals(system.values(u))[mapped]
+    inertia = np.array([1.0] * system.states + [0.0] * (len(u) - system.states)) / LAST_STEP
+    settled_again = _implicit_step(system, executed, inertia)
+    if settled_again is not None and np.allclose(settled_again, executed, rtol=1e-9, atol=1e-12):
+        return ""
+    return next(system.unknowns[place] for place in mapped if executed[place] != u[place])
 
 
 def _followed(system: System, u: FloatArray, first: float, refusals: int) -> tuple[FloatArray, bool]:
@@ -174,9 +195,13 @@ def _no_rest(system: System, u: FloatArray, residuals: FloatArray) -> Computatio
     per_hour = residuals[worst] * 3600.0 / state.unit.factor
     what = f"there is no steady state: '{name}' still moves by {per_hour:.4g} {state.unit.text} per hour"
     if state.mapped:
-        what = f"there is no steady state: '{name}' switches for ever, as on-off and time-proportioned control do"
-    hint = "balance what comes in and goes out, or start the scenario with `starts: given`"
-    return ComputationError([Problem(what, hint, state.where)])
+        return _switching(system, name)
+    return ComputationError([Problem(what, NO_REST, state.where)])
+
+
+def _switching(system: System, name: str) -> ComputationError:
+    what = f"there is no steady state: '{name}' switches for ever, as on-off and time-proportioned control do"
+    return ComputationError([Problem(what, NO_REST, system.model.states[name].where)])
 
 
 # ---------------------------------------------------------------- limits
@@ -306,7 +331,12 @@ def _look(system: System, begin: FloatArray, found: list[FloatArray]) -> None:
             u, arrived = _followed(system, begin, first, REFUSALS)
         except (ArithmeticError, ValueError):  # a start far off may have no value
             continue
-        if arrived and _possible(system, u) and not any(_same(system, u, other) for other in found):
+        if (
+            arrived
+            and not _creeping(system, u)
+            and _possible(system, u)
+            and not any(_same(system, u, other) for other in found)
+        ):
             found.append(u)
 
 
