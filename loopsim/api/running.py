@@ -10,6 +10,7 @@ from pathlib import Path
 from typing import Any
 
 from loopsim import __version__
+from loopsim.documents.library import Library
 from loopsim.documents.types import Scenario
 from loopsim.errors import ComputationError, InputError, Problems, fail
 from loopsim.model.choice import Source, scenario_sources
@@ -140,8 +141,8 @@ def _judged(
     runs = [
         not_run(name, failures[name], seconds(scenario.lasts))
         if name in failures
-        else run_of(cases[name], run_case(cases[name], wanted[name], native=native))
-        for name in sources
+        else run_of(cases[name], run_case(cases[name], wanted[name], native=native), computing(source))
+        for name, source in sources.items()
     ]
     return tuple(
         judge(scenario.name, one, scenario.accept)
@@ -149,6 +150,27 @@ def _judged(
         else Judged(scenario.name, one, FAILED, (), ())
         for one in runs
     )
+
+
+def computing(source: Source) -> frozenset[str]:
+    """The tags of blocks that only compute: a strategy's, whose files lie in a folder `control` or `logic`.
+
+    In a plant such a block stands for something physical, such as two flows that meet.
+    """
+    return frozenset(
+        tag
+        for diagram in source.diagrams
+        if diagram.kind == "strategy"
+        for use in diagram.blocks.values()
+        for tag in _computing(source.library, use.tag, use.block)
+    )
+
+
+def _computing(library: Library, tag: str, name: str) -> list[str]:
+    inside = library.block(name).blocks
+    if inside:
+        return [found for use in inside.values() for found in _computing(library, f"{tag}.{use.tag}", use.block)]
+    return [tag] if library.path(name).parent.name in ("control", "logic") else []
 
 
 def time_models(scenario: Scenario, sources: Mapping[str, Source], point: str = "") -> dict[str, Model]:

@@ -37,7 +37,8 @@ def run_of(
 ) -> Run:
     """A run ready to be judged.
 
-    `computing`: tags of blocks that only compute; `margins` of each loop where the linear side was asked.
+    `computing`: tags of blocks that only compute, with or without controllers; `margins` of each loop where the linear
+    side was asked.
     """
     model, events, graph = case.model, case.scenario.events, influences(case.model)
     judged = names_to_judge(case)
@@ -56,7 +57,7 @@ def run_of(
         spans=_spans(model),
         loops=tuple(Loop(one.tag, one.pv, one.sp, one.out, one.ff) for one in model.controllers),
         graph=graph,
-        computing=frozenset(computing),
+        computing=frozenset(computing) - {one.tag for one in model.controllers},
         margins=margins,
         air_pressure=model.air_pressure,
         remarks=tuple(one.sentence for one in case.point.unreached) if case.point is not None else (),
