@@ -12,7 +12,7 @@ from typing import Any
 from loopsim import __version__
 from loopsim.documents.library import Library
 from loopsim.documents.types import Scenario
-from loopsim.errors import ComputationError, InputError, Problems, fail
+from loopsim.errors import ComputationError, InputError, Problems, fail, nearest
 from loopsim.model.choice import Source, scenario_sources
 from loopsim.model.types import Model
 from loopsim.results import Table, Trends
@@ -32,11 +32,24 @@ CAUTION = "design and training aid; not a safety system and no part of one"
 
 @dataclass(frozen=True, slots=True)
 class Judgement:
-    """One scenario, judged: its strategies in order, and a name that follows from its files."""
+    """One scenario at one operating point ('' for the plant's own values), judged: its strategies in order.
+
+    `run_id` is a name that follows from its files.
+    """
 
     scenario: Scenario
+    point: str
     run_id: str
     strategies: tuple[Judged, ...]
+
+    @property
+    def title(self) -> str:
+        """What it is called where several stand together."""
+        return _title(self.scenario, self.point)
+
+
+def _title(scenario: Scenario, point: str) -> str:
+    return f"{scenario.name} at {point}" if point else scenario.name
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,9 +66,9 @@ class RunReport:
         return [*found, comparison_table(self.comparison)] if self.comparison is not None else found
 
     def json(self, trends: Mapping[str, Mapping[str, str]] | None = None) -> dict[str, Any]:
-        """The JSON document; `trends`: scenario -> strategy -> name of the file with its trend."""
+        """The JSON document; `trends`: title -> strategy -> name of the file with its trend."""
         files = trends or {}
-        documents = [_document(one, files.get(one.scenario.name, {})) for one in self.judgements]
+        documents = [_document(one, files.get(one.title, {})) for one in self.judgements]
         whole: dict[str, Any] = documents[0] if len(documents) == 1 else {"scenarios": documents}
         if self.comparison is not None:
             whole["comparison"] = comparison_json(self.comparison)
@@ -63,30 +76,53 @@ class RunReport:
 
 
 def _document(one: Judgement, trends: Mapping[str, str]) -> dict[str, Any]:
-    document = to_json(one.run_id, one.strategies, trends)
-    return {**document, "version": __version__, "seed": one.scenario.seed}
+    document = {**to_json(one.run_id, one.strategies, trends), "scenario": one.scenario.name}
+    point = {"point": one.point} if one.point else {}
+    return {**document, **point, "version": __version__, "seed": one.scenario.seed}
 
 
-def run(paths: Sequence[Path], strategy: str = "", point: str = "", native: bool = True) -> RunReport:
+def run(paths: Sequence[Path], strategy: str = "", points: Sequence[str] = (), native: bool = True) -> RunReport:
     """Run and judge every strategy of the scenarios (files, or folders that hold them).
 
-    `point`: an operating point of the plant; `native`: compiled, else interpreted (the same bits).
+    `points`: operating points of the plant, `all` for every one of them; by default those that the scenario names, or
+    the plant's own values. `native`: compiled, else interpreted (the same bits).
 
     Raises `InputError`; a strategy that cannot be computed is told in its column, and the others go on.
     """
-    plans = [(path, *scenario_sources(path, strategy)) for path in scenario_files(paths)]
-    for path, scenario, sources in plans:
-        _check(path, scenario, sources, point)
+    plans = [
+        (path, scenario, sources, point)
+        for path, scenario, sources in ((path, *scenario_sources(path, strategy)) for path in scenario_files(paths))
+        for point in _points(scenario, sources, points)
+    ]
+    titles = [_title(scenario, point) for _, scenario, _, point in plans]
+    if len(set(titles)) < len(titles):
+        twice = next(title for title in titles if titles.count(title) > 1)
+        raise fail(f"two scenarios are called '{twice}'", None, "rename one, or run them apart")
+    for plan in plans:
+        _check(*plan)
     # what any of the scenarios judges is kept in all of them, so that they share one program
-    names = dict.fromkeys(name for _, scenario, _ in plans for name in rule_names(scenario))
+    names = tuple(dict.fromkeys(name for _, scenario, _, _ in plans for name in rule_names(scenario)))
     judgements = [
-        Judgement(scenario, run_id(path, scenario), _judged(scenario, sources, point, tuple(names), native))
-        for path, scenario, sources in plans
+        Judgement(scenario, point, run_id(path, scenario, point), _judged(scenario, sources, point, names, native))
+        for path, scenario, sources, point in plans
     ]
     every = [one for judgement in judgements for one in judgement.strategies]
     several = any(len(one.strategies) > 1 for one in judgements)
     comparison = compare(every) if several and any(one.verdicts for one in every) else None
     return RunReport(tuple(judgements), comparison, _status(judgements))
+
+
+def _points(scenario: Scenario, sources: Mapping[str, Source], asked: Sequence[str]) -> tuple[str, ...]:
+    known = next(iter(sources.values())).points if sources else ()
+    wanted = tuple(asked) or scenario.points or ("",)
+    found = known if wanted == ("all",) else wanted
+    problems = Problems()
+    for name in found:
+        if name and name not in known:
+            where = None if asked else scenario.where
+            problems.add(f"no operating point is called '{name}'", where, nearest(name, known, "points"))
+    problems.raise_if_any()
+    return found
 
 
 def _check(path: Path, scenario: Scenario, sources: Mapping[str, Source], point: str) -> None:
@@ -145,9 +181,9 @@ def _judged(
         for name, source in sources.items()
     ]
     return tuple(
-        judge(scenario.name, one, scenario.accept)
+        judge(_title(scenario, point), one, scenario.accept)
         if one.strategy in cases
-        else Judged(scenario.name, one, FAILED, (), ())
+        else Judged(_title(scenario, point), one, FAILED, (), ())
         for one in runs
     )
 
@@ -193,9 +229,9 @@ def _other_models(path: Path, scenario: Scenario, sources: Mapping[str, Source],
     return models
 
 
-def run_id(path: Path, scenario: Scenario) -> str:
-    """A name for this run that follows from its files, the version and the seed, and from nothing else."""
-    digest = hashlib.sha256(f"{__version__}/{scenario.seed}".encode())
+def run_id(path: Path, scenario: Scenario, point: str = "") -> str:
+    """A name for this run that follows from its files, the version, the seed and the point, and from nothing else."""
+    digest = hashlib.sha256("/".join((__version__, str(scenario.seed), *([point] if point else []))).encode())
     names = {path.name, scenario.plant, *(one for files in scenario.strategies.values() for one in files)}
     for name in sorted(names):
         digest.update(name.encode() + b"\0" + (path.parent / name).read_bytes() + b"\0")

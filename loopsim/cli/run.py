@@ -18,7 +18,7 @@ from loopsim.output.text import render
 @click.command("run")
 @click.argument("scenarios", nargs=-1, required=True, type=click.Path(path_type=Path))
 @click.option("--strategy", default="", help="Run this strategy only.")
-@click.option("--points", default="", help="Run at this operating point of the plant.")
+@click.option("--points", default="", help="Run at these operating points (NAME,…), or `all`.")
 @click.option(
     "--out", type=click.Path(path_type=Path), help="Write trends (CSV), pictures, JSON and a JUnit file here."
 )
@@ -43,7 +43,7 @@ def command(
     if cache is not None:
         os.environ["LOOPSIM_CACHE"] = str(cache)
     begun = time.perf_counter()
-    report = api.run(scenarios, strategy, points, native=not interpreted)
+    report = api.run(scenarios, strategy, tuple(points.split(",")) if points else (), native=not interpreted)
     written = write_run(report, out) if out is not None else None
     if as_json:
         click.echo(json_text(report.json(written)))

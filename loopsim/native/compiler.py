@@ -10,12 +10,15 @@ the same bits as in Python.
 from __future__ import annotations
 
 import ast
+import threading
 from dataclasses import dataclass, field
 
 from llvmlite import ir
 
 from loopsim.native.kinds import ELEMENT, TYPES, NotCompilable
 from loopsim.native.statements import Lowering
+
+PARSING = threading.Lock()  # Python 3.11 counts the depth of a parse for all threads together, and stumbles over it
 
 
 @dataclass(slots=True)
@@ -30,7 +33,9 @@ class Module:
     whole: dict[str, bool] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
-        for node in ast.parse(self.text).body:
+        with PARSING:
+            body = ast.parse(self.text).body
+        for node in body:
             if isinstance(node, ast.FunctionDef):
                 self.functions[node.name] = node
             elif isinstance(node, ast.Assign) and isinstance(node.targets[0], ast.Name):

@@ -33,7 +33,7 @@ def run_figure(scenario: Scenario, judged: Sequence[Judged]) -> Figure | None:
     notes = [scenario.about] if scenario.about else []
     if any(curve.faint for panel in panels for curve in panel.curves):
         notes.append("Noisy signals: pale as recorded, strong their running median.")
-    return Figure(scenario.name, f"time [{word}]", panels, tuple(sorted(marks)), tuple(notes))
+    return Figure(judged[0].scenario, f"time [{word}]", panels, tuple(sorted(marks)), tuple(notes))
 
 
 class _View:

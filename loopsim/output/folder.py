@@ -14,21 +14,21 @@ from loopsim.study.export import suites
 
 
 def write_run(report: RunReport, folder: Path) -> dict[str, dict[str, str]]:
-    """Write all files of a run; gives the trends' file names by scenario and strategy."""
+    """Write all files of a run; gives the trends' file names by title of the judgement and by strategy."""
     folder.mkdir(parents=True, exist_ok=True)
     names: dict[str, dict[str, str]] = {}
     single = len(report.judgements) == 1
     for judgement in report.judgements:
-        scenario = judgement.scenario.name
-        names[scenario] = {}
+        stem = judgement.title.replace(" at ", ".")
+        names[judgement.title] = {}
         for one in judgement.strategies:
             if len(one.run.trends.time):
-                strategy = one.run.strategy
-                names[scenario][strategy] = f"{strategy}.csv" if single else f"{scenario}.{strategy}.csv"
-                write_csv(one.run.trends, folder / names[scenario][strategy], one.run.air_pressure)
+                name = f"{one.run.strategy}.csv" if single else f"{stem}.{one.run.strategy}.csv"
+                write_csv(one.run.trends, folder / name, one.run.air_pressure)
+                names[judgement.title][one.run.strategy] = name
         figure = run_figure(judgement.scenario, judgement.strategies)
         if figure is not None:
-            write_pictures(figure, folder / scenario)
+            write_pictures(figure, folder / stem)
     every = [one for judgement in report.judgements for one in judgement.strategies]
     (folder / "results.json").write_text(json_text(report.json(names)) + "\n", encoding="utf-8")
     (folder / "results.xml").write_text(junit_text(suites(every)), encoding="utf-8")

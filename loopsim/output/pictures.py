@@ -37,7 +37,7 @@ def write_pictures(figure: Figure, stem: Path) -> list[Path]:
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.backends.backend_svg import FigureCanvasSVG
 
-    png, svg = stem.with_suffix(".png"), stem.with_suffix(".svg")
+    png, svg = (stem.with_name(f"{stem.name}.{ending}") for ending in ("png", "svg"))
     with matplotlib.rc_context():
         matplotlib.rcdefaults()
         matplotlib.rcParams.update(SETTINGS)  # type: ignore[arg-type]

@@ -50,6 +50,7 @@ def test_help_loads_nothing_heavy() -> None:
         "sympy",
         "control",
         "llvmlite",
+        "rich",
     }
 
 
