@@ -17,6 +17,8 @@ from loopsim.model.rest import OperatingPoint, all_rests, eigenvalues, rest
 from loopsim.model.types import Model
 from loopsim.results import Cell, Table
 
+LIMITS = ("value", "low", "high", "headroom_percent")
+
 
 @dataclass(frozen=True, slots=True)
 class SteadyReport:
@@ -81,7 +83,8 @@ def _steady_tables(name: str, found: _Steady) -> list[Table]:
     notes += [words[found.stable[0]]] if len(found.rests) == 1 else _stabilities(found.stable)
     notes += [f"assumed: {one}" for one in model.assumed]
     columns = ("value",) if len(found.rests) == 1 else tuple(f"rest {number + 1}" for number in range(len(found.rests)))
-    return [Table(f"{name} at rest", ("signal", *columns, "unit", ""), tuple(rows), tuple(notes))]
+    whole = Table(f"{name} at rest", ("signal", *columns, "unit", ""), tuple(rows), tuple(notes))
+    return [whole, _limit_table(model, first)]
 
 
 def _stabilities(stable: Sequence[bool | None]) -> list[str]:
@@ -102,15 +105,32 @@ def _rest_json(model: Model, point: OperatingPoint, stable: bool | None) -> dict
         value = point.values.get(model.in_use.get(name, name))
         if value is not None:
             signals[name] = {"value": from_si(value, about.unit, model.air_pressure), "unit": about.unit.text}
-    limits = [_limit(name, one["value"]) for name, one in signals.items() if one["unit"] == "%"]
+    limits = _limits(model, point)
     unreached = [one.sentence for one in point.unreached]
     return {"signals": signals, "stable": stable, "limits": limits, "unreached": unreached}
 
 
-def _limit(name: str, value: float) -> dict[str, Any]:
-    """How far a signal in per cent is from nought and a hundred."""
-    room = min(value, 100.0 - value)
-    return {"signal": name, "value": value, "low": 0.0, "high": 100.0, "headroom_percent": room}
+def _limits(model: Model, point: OperatingPoint) -> list[dict[str, Any]]:
+    """How far every computed signal in per cent is from its ends: a controller's limits, else 0 % and 100 %."""
+    found = []
+    for name, about in model.signals.items():
+        value = point.values.get(model.in_use.get(name, name))
+        if value is None or about.unit.text != "%" or name in model.slots:
+            continue
+        ends = [model.slots.get(f"{about.tag}.limits.{end}") for end in ("low", "high")]
+        own = any(one.out == name for one in model.controllers)
+        low, high = (100.0 * end.value if own and end else bare for end, bare in zip(ends, (0.0, 100.0), strict=True))
+        room = min(100.0 * value - low, high - 100.0 * value)
+        found.append({"signal": name, "value": 100.0 * value, "low": low, "high": high, "headroom_percent": room})
+    return found
+
+
+def _limit_table(model: Model, point: OperatingPoint) -> Table:
+    rows = [
+        tuple(Cell(text) for text in (one["signal"], *(f"{one[key]:.4g} %" for key in LIMITS)))
+        for one in _limits(model, point)
+    ]
+    return Table("room to the limits", ("signal", "value", "low", "high", "room"), tuple(rows))
 
 
 def model_source(path: Path, strategies: Sequence[Path], strategy: str) -> Source:

@@ -133,3 +133,20 @@ wires: [tank.T -> element.T, element.Q -> tank.Q, tank.T -> TIC-1.pv, TIC-1.out 
     assert status == 0 and "element would have to be at 150 %" in sentence and "40.75 degC" in sentence
     (limit,) = [one for one in document["limits"] if one["signal"] == "TIC-1.out"]
     assert (limit["value"], limit["headroom_percent"]) == (100.0, 0.0)
+
+
+def test_room_counts_to_the_controllers_own_limits(write: Write, capsys: pytest.CaptureFixture[str]) -> None:
+    """By hand: 40 degC want 97.38 kW of 200 kW, 48.69 %; 8.69 % above a lower limit of 40 %."""
+    plant = """plant: tank
+blocks:
+  tank: {use: heated_tank, V: 1.8 m^3, q: 3 m^3/h, T_in: 12 degC}
+  element: {use: heater_element, power: 200 kW, C: 50 kJ/K, UA: 5 kW/K}
+  TIC-1: {use: pid, action: reverse, range: [0 degC, 100 degC], gain: 5, integral: 300 s, sp: 40 degC, limits: [40 %, 90 %]}
+wires: [tank.T -> element.T, element.Q -> tank.Q, tank.T -> TIC-1.pv, TIC-1.out -> element.duty]
+"""
+    path = write({"p.yaml": plant}) / "p.yaml"
+    (limit,) = json.loads(steady(capsys, path, "--json")[1])["limits"]
+    assert (limit["low"], limit["high"]) == (pytest.approx(40.0), pytest.approx(90.0))
+    assert limit["headroom_percent"] == pytest.approx(100 * 998 * 4182 * 3 / 3600 * 28 / 200e3 - 40, abs=1e-6)
+    out = steady(capsys, path)[1]
+    assert "room to the limits" in out and "8.692 %" in out
