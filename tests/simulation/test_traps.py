@@ -209,3 +209,20 @@ def test_a_choice_between_constants_is_switched_during_the_run(write: Write) -> 
     trends = trends_of(write({"blocks/filled.yaml": block, "plant.yaml": plant, "fill.yaml": run}), "fill")
     expected = np.where(trends.time < 100, 0.02 * trends.time, 2 + 0.001 * (trends.time - 100))
     assert trends.columns["V-1.h"] == pytest.approx(expected, abs=1e-9)
+
+
+def test_a_wired_set_point_stays_in_manual(write: Write) -> None:
+    """To manual, the wire steps, to auto: the set point of before still counts. Source: the control law as specified."""
+    strategy = controller(sp="", mode="cascade").replace("wires:\n", "wires:\n  - wish -> C-1.sp\n")
+    events = ["at: 1 min, mode: C-1, to: manual", "at: 2 min, step: wish, to: 55 %", "at: 3 min, mode: C-1, to: auto"]
+    events.append("at: 4 min, mode: C-1, to: cascade")
+    folder = write(
+        {
+            "plant.yaml": LAG.replace("  load: {is: 0 %}\n", "  load: {is: 0 %}\n  wish: {is: 40 %}\n"),
+            "feedback.yaml": strategy,
+            "scenario.yaml": scenario(*events, lasts="5 min"),
+        }
+    )
+    columns = trends_of(folder).columns
+    at = {minutes: columns["C-1.sp"][int(minutes * 120)] for minutes in (0.5, 1.5, 2.5, 3.5, 4.5)}
+    assert list(at.values()) == pytest.approx([0.40, 0.40, 0.40, 0.40, 0.55], abs=1e-12)
