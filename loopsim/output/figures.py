@@ -20,7 +20,7 @@ STEPWISE = frozenset({"step", "pulse", "mode", "fault"})  # kinds of event that 
 
 
 def run_figure(scenario: Scenario, judged: Sequence[Judged]) -> Figure | None:
-    """The comparison of all strategies of one scenario; None when none of them ran."""
+    """The comparison of all strategies of one scenario; None when none of them ran or nothing was recorded."""
     runs = {one.run.strategy: one.run for one in judged if len(one.run.trends.time)}
     if not runs:
         return None
@@ -30,6 +30,8 @@ def run_figure(scenario: Scenario, judged: Sequence[Judged]) -> Figure | None:
         (one.time / scale, one.text): None for run in runs.values() for one in run.happenings if one.kind != "start"
     }
     panels = tuple(view.panels())
+    if not panels:
+        return None
     notes = [scenario.about] if scenario.about else []
     if any(curve.faint for panel in panels for curve in panel.curves):
         notes.append("Noisy signals: pale as recorded, strong their running median.")
@@ -53,7 +55,13 @@ class _View:
         upset = [name for name in upsets if self._having(name)][: MOST["upsets"]]
         found = [self._controlled_panel(name) for name in controlled]
         found += [Panel(self._label(name), self._curves(name, True, len(self.runs) > 1)) for name in outputs]
-        return found + [Panel(self._label(name), self._curves(name, self._is_stepwise(name), True)) for name in upset]
+        found += [Panel(self._label(name), self._curves(name, self._is_stepwise(name), True)) for name in upset]
+        return found or [Panel(self._label(name), self._curves(name, False, True)) for name in self._recorded()]
+
+    def _recorded(self) -> list[str]:
+        """The first signals that were recorded, where those that a picture is made of were not."""
+        names = dict.fromkeys(name for run in self.runs.values() for name in run.trends.columns)
+        return list(names)[: MOST["outputs"]]
 
     def _having(self, name: str) -> dict[str, Run]:
         return {strategy: run for strategy, run in self.runs.items() if name in run.trends.columns}

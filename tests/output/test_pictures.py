@@ -13,6 +13,7 @@ from xml.etree import ElementTree
 import numpy as np
 import pytest
 
+from loopsim import api
 from loopsim.api.running import RunReport
 from loopsim.output.figures import run_figure
 from loopsim.output.folder import write_run
@@ -151,3 +152,12 @@ def test_no_clock_place_or_host_in_any_file(report: RunReport, tmp_path: Path, f
 
 def test_a_run_without_values_has_no_picture(report: RunReport) -> None:
     assert run_figure(report.judgements[0].scenario, ()) is None
+
+
+def test_a_picture_of_what_was_recorded(folder: Path) -> None:
+    """Neither the judged signals nor the events' targets: what there is is drawn."""
+    text = (folder / "draw.yaml").read_text().replace("scenario: draw", "scenario: few")
+    (folder / "few.yaml").write_text(text.replace("{every: 10 s}", "{every: 10 s, signals: [element.Q, TT-1.pv]}"))
+    (judgement,) = api.run([folder / "few.yaml"]).judgements
+    found = run_figure(judgement.scenario, judgement.strategies)
+    assert found is not None and [one.y_label for one in found.panels] == ["element.Q [kW]", "TT-1.pv [degC]"]
