@@ -13,11 +13,11 @@ import ast
 import threading
 from dataclasses import dataclass, field
 
-from llvmlite import ir
-
 from loopsim.native.kinds import ELEMENT, TYPES, NotCompilable
 from loopsim.native.statements import Lowering
 
+PURE = "nounwind willreturn memory(none)"
+SMALL = 80  # lines: a function of no more is written out where it is called
 PARSING = threading.Lock()  # Python 3.11 counts the depth of a parse for all threads together, and stumbles over it
 
 
@@ -26,10 +26,12 @@ class Module:
     """The functions of a text and what has been compiled of them."""
 
     text: str
-    module: ir.Module = field(default_factory=lambda: ir.Module(name="loopsim"))
     functions: dict[str, ast.FunctionDef] = field(default_factory=dict)
     constants: dict[str, float | int] = field(default_factory=dict)
-    compiled: dict[str, tuple[ir.Function, str, tuple[str, ...]]] = field(default_factory=dict)
+    compiled: dict[str, tuple[str, tuple[str, ...]]] = field(default_factory=dict)
+    bodies: dict[str, str] = field(default_factory=dict)
+    entries: set[str] = field(default_factory=set)
+    declared: dict[str, str] = field(default_factory=dict)
     whole: dict[str, bool] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
@@ -41,37 +43,49 @@ class Module:
             elif isinstance(node, ast.Assign) and isinstance(node.targets[0], ast.Name):
                 self.constants[node.targets[0].id] = ast.literal_eval(node.value)
 
-    def function(self, name: str, kinds: tuple[str, ...]) -> tuple[ir.Function, str]:
-        """The compiled function for these argument kinds, and the kind that it returns."""
+    def function(self, name: str, kinds: tuple[str, ...]) -> tuple[str, tuple[str, ...]]:
+        """What the function compiled for these arguments returns, and the kinds that it takes."""
         if name not in self.compiled:
             node = self.functions[name]
             returns = self._returned(node, dict(zip([one.arg for one in node.args.args], kinds, strict=True)))
-            signature = ir.FunctionType(TYPES[returns], [TYPES[kind] for kind in kinds])
-            made = ir.Function(self.module, signature, name=f"text_{name}")
-            made.linkage = "internal"
-            for argument, kind in zip(made.args, kinds, strict=True):
-                if kind in ELEMENT:
-                    argument.add_attribute("noalias")
-            self.compiled[name] = (made, returns, kinds)
-            Lowering(self, node, made, returns, kinds).lower()
-        made, returns, known = self.compiled[name]
-        if known != kinds:
+            self.compiled[name] = returns, kinds
+            self.bodies[name] = Lowering(self, node, kinds, returns).lower()
+        returns, known = self.compiled[name]
+        if any(have != want and (have, want) != ("i", "f") for have, want in zip(kinds, known, strict=True)):
             raise NotCompilable(f"{name} is called with {kinds} and with {known}")
-        return made, returns
+        return returns, known
 
     def entry(self, name: str, kinds: tuple[str, ...]) -> None:
         """Compile a function that is called from outside."""
-        made, _ = self.function(name, kinds)
-        made.linkage = "external"
+        self.function(name, kinds)
+        self.entries.add(name)
+
+    def llvm(self) -> str:
+        """The whole module in LLVM's text."""
+        declared = [f"declare double {name}({kinds}) {PURE}" for name, kinds in self.declared.items()]
+        return "\n".join([*declared, *map(self._defined, self.bodies)])
+
+    def _defined(self, name: str) -> str:
+        returns, kinds = self.compiled[name]
+        names = [one.arg for one in self.functions[name].args.args]
+        pairs = zip(names, kinds, strict=True)
+        taken = ", ".join(f"{TYPES[kind]}{' noalias' if kind in ELEMENT else ''} %{one}" for one, kind in pairs)
+        head = f"{TYPES[returns]} @text_{name}({taken}) nounwind"
+        if name not in self.entries:
+            head = f"internal {head}{' alwaysinline' if self.bodies[name].count(chr(10)) < SMALL else ''}"
+        return f"define {head} {{\n{self.bodies[name]}\n}}"
 
     def _returned(self, node: ast.FunctionDef, kinds: dict[str, str]) -> str:
         """Float unless all returns are whole numbers."""
         return "i" if self._gives_whole(node, {name for name, kind in kinds.items() if kind == "i"}) else "f"
 
     def _gives_whole(self, node: ast.FunctionDef, known: set[str]) -> bool:
-        whole = known | self._whole_names(node)
-        returns = [one.value for one in ast.walk(node) if isinstance(one, ast.Return) and one.value is not None]
-        return bool(returns) and all(self._is_whole(one, whole) for one in returns)
+        inside = list(ast.walk(node))
+        returns = [one.value for one in inside if isinstance(one, ast.Return) and one.value is not None]
+        if not returns:
+            return False
+        whole = known | self._whole_names([one for one in inside if isinstance(one, ast.Assign)])
+        return all(self._is_whole(one, whole) for one in returns)
 
     def _call_gives_whole(self, name: str) -> bool:
         """Whether a function of the text gives a whole number, whatever it is called with."""
@@ -81,18 +95,16 @@ class Module:
             self.whole[name] = called is not None and self._gives_whole(called, set())
         return self.whole[name]
 
-    def _whole_names(self, node: ast.FunctionDef) -> set[str]:
+    def _whole_names(self, assigned: list[ast.Assign]) -> set[str]:
         """Locals that hold whole numbers by their first assignment."""
-        found: dict[str, bool] = {}
-        assigned = [
-            one for one in ast.walk(node) if isinstance(one, ast.Assign) and isinstance(one.targets[0], ast.Name)
-        ]
+        seen, whole = set[str](), set[str]()
         for one in sorted(assigned, key=lambda one: one.lineno):
-            assert isinstance(one.targets[0], ast.Name)
-            found.setdefault(
-                one.targets[0].id, self._is_whole(one.value, {name for name, is_so in found.items() if is_so})
-            )
-        return {name for name, is_so in found.items() if is_so}
+            target = one.targets[0]
+            if isinstance(target, ast.Name) and target.id not in seen:
+                seen.add(target.id)
+                if self._is_whole(one.value, whole):
+                    whole.add(target.id)
+        return whole
 
     def _is_whole(self, node: ast.expr, names: set[str]) -> bool:
         if isinstance(node, ast.Constant):

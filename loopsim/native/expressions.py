@@ -5,54 +5,49 @@ from __future__ import annotations
 import ast
 from typing import Any
 
-from llvmlite import ir
-
 from loopsim.native.kinds import (
-    BIT,
+    COMBINED,
     COMPARED,
-    DOUBLE,
     ELEMENT,
     INTRINSIC,
     LIBRARY,
-    LONG,
     TYPES,
     NotCompilable,
     Text,
     Value,
+    number,
 )
+from loopsim.native.lines import Lines
 
 
 class Expressions:
-    """What a function's expressions need: its locals, which live in stack slots that the optimiser makes registers."""
+    """What the expressions of one function need."""
 
-    def __init__(
-        self, module: Text, node: ast.FunctionDef, made: ir.Function, returns: str, kinds: tuple[str, ...]
-    ) -> None:
-        self.module, self.node, self.made, self.returns = module, node, made, returns
-        self.slots: dict[str, tuple[str, Any]] = {}
-        self.entry = made.append_basic_block("entry")
-        self.builder = ir.IRBuilder(self.entry)
-        self.loops: list[Any] = []
-        for argument, kind, name in zip(made.args, kinds, node.args.args, strict=True):
-            self.store(name.arg, Value(kind, argument))
+    def __init__(self, module: Text, node: ast.FunctionDef, kinds: tuple[str, ...], returns: str) -> None:
+        self.module, self.node, self.returns = module, node, returns
+        self.lines = Lines()
+        self.slots: dict[str, Value] = {}
+        self.arguments = {
+            argument.arg: Value(kind, f"%{argument.arg}") for argument, kind in zip(node.args.args, kinds, strict=True)
+        }
 
     # ------------------------------------------------------------ locals
     def store(self, name: str, value: Value) -> None:
         if name not in self.slots:
+            self.arguments.pop(name, None)
             kind = "i" if value.kind == "b" else value.kind
-            with self.builder.goto_entry_block():
-                self.slots[name] = (kind, self.builder.alloca(TYPES[kind], name=name))
-        kind, slot = self.slots[name]
-        self.builder.store(self.cast(value, kind), slot)
+            self.slots[name] = Value(kind, self.lines.slot(kind))
+        slot = self.slots[name]
+        self.lines.do(f"store {self.cast(value, slot.kind)}, ptr {slot.text}")
 
-    def cast(self, value: Value, kind: str) -> Any:
+    def cast(self, value: Value, kind: str) -> Value:
         """A value as another kind."""
         if value.kind == kind:
-            return value.value
+            return value
         if kind == "f" and value.kind == "i":
-            return self.builder.sitofp(value.value, DOUBLE)
+            return self.lines.make("f", f"sitofp {value} to double")
         if kind == "i" and value.kind == "b":
-            return self.builder.zext(value.value, LONG)
+            return self.lines.make("i", f"zext {value} to i64")
         raise NotCompilable(f"{self.node.name}: {value.kind} where {kind} is wanted")
 
     def refuse(self, node: ast.AST) -> Any:
@@ -63,161 +58,132 @@ class Expressions:
         found: Value = getattr(self, f"of_{type(node).__name__}", self.refuse)(node)
         return found
 
-    def condition(self, node: ast.expr) -> Any:
+    def condition(self, node: ast.expr) -> Value:
         value = self.value(node)
         if value.kind == "b":
-            return value.value
-        if value.kind == "i":
-            return self.builder.icmp_signed("!=", value.value, ir.Constant(LONG, 0))
-        return self.builder.fcmp_unordered("!=", value.value, ir.Constant(DOUBLE, 0.0))
+            return value
+        return self.compared(ast.NotEq, value, number(0 if value.kind == "i" else 0.0))
 
     def name(self, name: str) -> Value:
         if name in self.slots:
-            kind, slot = self.slots[name]
-            return Value(kind, self.builder.load(slot))
+            slot = self.slots[name]
+            return self.lines.make(slot.kind, f"load {TYPES[slot.kind]}, ptr {slot.text}")
+        if name in self.arguments:
+            return self.arguments[name]
         if name in ("NAN", "INFINITY"):
-            return Value("f", ir.Constant(DOUBLE, float("nan" if name == "NAN" else "inf")))
+            return number(float("nan" if name == "NAN" else "inf"))
         if name not in self.module.constants:
             raise NotCompilable(f"{self.node.name}: '{name}' has no value")
-        return self.constant(self.module.constants[name])
-
-    def constant(self, number: float | int) -> Value:
-        return (
-            Value("i", ir.Constant(LONG, number))
-            if isinstance(number, int)
-            else Value("f", ir.Constant(DOUBLE, number))
-        )
+        return number(self.module.constants[name])
 
     def of_Name(self, node: ast.Name) -> Value:
         return self.name(node.id)
 
     def of_Constant(self, node: ast.Constant) -> Value:
         assert isinstance(node.value, int | float)
-        return self.constant(node.value)
+        return number(node.value)
 
-    def place(self, node: ast.Subscript) -> tuple[str, Any]:
-        """The kind and address of `a[i]`."""
+    def place(self, node: ast.Subscript) -> Value:
+        """The address of `a[i]`, with the kind of what stands there."""
         array = self.value(node.value)
         index = self.cast(self.value(node.slice), "i")
-        return ELEMENT[array.kind], self.builder.gep(array.value, [index], inbounds=True)
+        kind = ELEMENT[array.kind]
+        return self.lines.make(kind, f"getelementptr inbounds {TYPES[kind]}, {array}, {index}")
 
     def of_Subscript(self, node: ast.Subscript) -> Value:
-        kind, place = self.place(node)
-        return Value(kind, self.builder.load(place))
+        place = self.place(node)
+        return self.lines.make(place.kind, f"load {TYPES[place.kind]}, ptr {place.text}")
 
     def of_UnaryOp(self, node: ast.UnaryOp) -> Value:
         if isinstance(node.op, ast.Not):
-            return Value("b", self.builder.not_(self.condition(node.operand)))
+            return self.lines.make("b", f"xor {self.condition(node.operand)}, true")
         value = self.value(node.operand)
-        if isinstance(node.op, ast.USub):
-            made = self.builder.fneg(value.value) if value.kind == "f" else self.builder.neg(value.value)
-            return Value(value.kind, made)
-        return value
+        if not isinstance(node.op, ast.USub):
+            return value
+        return self.lines.make(value.kind, f"fneg {value}" if value.kind == "f" else f"sub i64 0, {value.text}")
 
     def of_BinOp(self, node: ast.BinOp) -> Value:
         return self.arithmetic(node.op, self.value(node.left), self.value(node.right))
 
     def arithmetic(self, sign: ast.operator, left: Value, right: Value) -> Value:
-        name = {ast.Add: "add", ast.Sub: "sub", ast.Mult: "mul", ast.Div: "div"}[type(sign)]
+        name = COMBINED[type(sign)]
         if left.kind == right.kind == "i" and name != "div":
-            return Value("i", getattr(self.builder, name)(left.value, right.value))
-        made = getattr(self.builder, f"f{name}")(self.cast(left, "f"), self.cast(right, "f"))
-        return Value("f", made)
+            return self.lines.make("i", f"{name} {left}, {right.text}")
+        left, right = self.cast(left, "f"), self.cast(right, "f")
+        return self.lines.make("f", f"f{name} {left}, {right.text}")
 
     def of_Compare(self, node: ast.Compare) -> Value:
-        left, right = self.value(node.left), self.value(node.comparators[0])
-        sign = COMPARED[type(node.ops[0])]
+        return self.compared(type(node.ops[0]), self.value(node.left), self.value(node.comparators[0]))
+
+    def compared(self, sign: type[ast.cmpop], left: Value, right: Value) -> Value:
+        whole, real = COMPARED[sign]
         if left.kind == right.kind == "i":
-            return Value("b", self.builder.icmp_signed(sign, left.value, right.value))
-        sides = self.cast(left, "f"), self.cast(right, "f")
-        compare = self.builder.fcmp_unordered if sign == "!=" else self.builder.fcmp_ordered
-        return Value("b", compare(sign, *sides))
+            return self.lines.make("b", f"icmp {whole} {left}, {right.text}")
+        left, right = self.cast(left, "f"), self.cast(right, "f")
+        return self.lines.make("b", f"fcmp {real} {left}, {right.text}")
 
     def of_BoolOp(self, node: ast.BoolOp) -> Value:
         """`and`, `or`: a side that does not decide is not looked at."""
+        decided = "true" if isinstance(node.op, ast.Or) else "false"
         made = self.condition(node.values[0])
         for part in node.values[1:]:
-            before = self.builder.block
-            look = self.builder.append_basic_block("look")
-            after = self.builder.append_basic_block("decided")
-            if isinstance(node.op, ast.And):
-                self.builder.cbranch(made, look, after)
-            else:
-                self.builder.cbranch(made, after, look)
-            self.builder.position_at_end(look)
-            other, ends = self.condition(part), self.builder.block
-            self.builder.branch(after)
-            self.builder.position_at_end(after)
-            joined = self.builder.phi(BIT)
-            joined.add_incoming(ir.Constant(BIT, isinstance(node.op, ast.Or)), before)
-            joined.add_incoming(other, ends)
-            made = joined
-        return Value("b", made)
+            before, look, after = self.lines.label, self.lines.name("look"), self.lines.name("decided")
+            self.lines.choose(made, *((after, look) if decided == "true" else (look, after)))
+            self.lines.begin(look)
+            other, end = self.condition(part), self.lines.label
+            self.lines.begin(after)
+            made = self.lines.make("b", f"phi i1 [{decided}, %{before}], [{other.text}, %{end}]")
+        return made
 
     def of_IfExp(self, node: ast.IfExp) -> Value:
-        test = self.condition(node.test)
-        then = self.builder.append_basic_block("then")
-        otherwise = self.builder.append_basic_block("otherwise")
-        after = self.builder.append_basic_block("chosen")
-        self.builder.cbranch(test, then, otherwise)
-        self.builder.position_at_end(then)
-        first, first_end = self.value(node.body), self.builder.block
-        self.builder.position_at_end(otherwise)
-        second, second_end = self.value(node.orelse), self.builder.block
-        kind = "i" if first.kind == second.kind == "i" else "f"
-        ends = []
-        for value, end in ((first, first_end), (second, second_end)):
-            self.builder.position_at_end(end)
-            ends.append((self.cast(value, kind), self.builder.block))
-            self.builder.branch(after)
-        self.builder.position_at_end(after)
-        joined = self.builder.phi(TYPES[kind])
-        for made, end in ends:
-            joined.add_incoming(made, end)
-        return Value(kind, joined)
+        then, otherwise, after = (self.lines.name(stem) for stem in ("then", "otherwise", "chosen"))
+        self.lines.choose(self.condition(node.test), then, otherwise)
+        self.lines.begin(then)
+        first = self.value(node.body)
+        whole = first.kind == "i"
+        first = first if whole else self.cast(first, "f")
+        first_end = self.lines.label
+        self.lines.go(after)
+        self.lines.begin(otherwise)
+        second = self.cast(self.value(node.orelse), first.kind)
+        second_end = self.lines.label
+        self.lines.begin(after)
+        pairs = f"[{first.text}, %{first_end}], [{second.text}, %{second_end}]"
+        return self.lines.make(first.kind, f"phi {TYPES[first.kind]} {pairs}")
 
     def of_Call(self, node: ast.Call) -> Value:
         assert isinstance(node.func, ast.Name)
-        arguments = [self.value(one) for one in node.args]
-        return self.call(node.func.id, arguments)
+        return self.call(node.func.id, [self.value(one) for one in node.args])
 
     def call(self, name: str, arguments: list[Value]) -> Value:
         if name in self.module.functions:
             kinds = tuple("i" if one.kind == "b" else one.kind for one in arguments)
-            known = self.module.compiled.get(name)
-            wanted = known[2] if known is not None else kinds
-            wanted = tuple(
-                "f" if have == "i" and want == "f" else have for have, want in zip(kinds, wanted, strict=True)
-            )
-            made, returns = self.module.function(name, wanted)
+            returns, wanted = self.module.function(name, kinds)
             values = [self.cast(one, kind) for one, kind in zip(arguments, wanted, strict=True)]
-            return Value(returns, self.builder.call(made, values))
+            return self.called(returns, f"@text_{name}", values)
         if name == "int":
-            return Value("i", self.builder.fptosi(self.cast(arguments[0], "f"), LONG))
+            return self.lines.make("i", f"fptosi {self.cast(arguments[0], 'f')} to i64")
         if name == "abs":
             return self.absolute(arguments[0])
         floats = [self.cast(one, "f") for one in arguments]
         if name == "div":
-            return Value("f", self.builder.fdiv(*floats))
+            return self.lines.make("f", f"fdiv {floats[0]}, {floats[1].text}")
         if name in INTRINSIC:
-            intrinsic = self.module.module.declare_intrinsic(INTRINSIC[name], [DOUBLE])
-            return Value("f", self.builder.call(intrinsic, floats))
+            return self.outside(f"@llvm.{INTRINSIC[name]}.f64", floats)
         if name in LIBRARY:
-            return Value("f", self.builder.call(self.library(name), floats))
+            return self.outside(f"@loopsim_{name}", floats)
         raise NotCompilable(f"{self.node.name}: there is no function '{name}'")
+
+    def called(self, returns: str, name: str, values: list[Value]) -> Value:
+        return self.lines.make(returns, f"call {TYPES[returns]} {name}({', '.join(map(str, values))})")
+
+    def outside(self, name: str, floats: list[Value]) -> Value:
+        self.module.declared[name] = ", ".join("double" for _ in floats)
+        return self.called("f", name, floats)
 
     def absolute(self, value: Value) -> Value:
         if value.kind == "f":
-            return Value(
-                "f", self.builder.call(self.module.module.declare_intrinsic("llvm.fabs", [DOUBLE]), [value.value])
-            )
-        negative = self.builder.icmp_signed("<", value.value, ir.Constant(LONG, 0))
-        return Value("i", self.builder.select(negative, self.builder.neg(value.value), value.value))
-
-    def library(self, name: str) -> ir.Function:
-        known = self.module.module.globals.get(f"loopsim_{name}")
-        if isinstance(known, ir.Function):
-            return known
-        made = ir.Function(self.module.module, ir.FunctionType(DOUBLE, [DOUBLE] * LIBRARY[name]), f"loopsim_{name}")
-        made.attributes.add("nounwind")
-        return made
+            return self.outside("@llvm.fabs.f64", [value])
+        negative = self.compared(ast.Lt, value, number(0))
+        turned = self.lines.make("i", f"sub i64 0, {value.text}")
+        return self.lines.make("i", f"select {negative}, {turned}, {value}")

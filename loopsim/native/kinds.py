@@ -1,21 +1,14 @@
-"""Kinds of values in the restricted language, what it may call, and what a compiled text offers."""
+"""Kinds of values in the restricted language, and what it may call."""
 
 from __future__ import annotations
 
 import ast
+import struct
 from dataclasses import dataclass
-from typing import Any, Protocol
+from typing import Protocol
 
-from llvmlite import ir
-
-DOUBLE, LONG, BIT = ir.DoubleType(), ir.IntType(64), ir.IntType(1)
-TYPES: dict[str, ir.Type] = {
-    "f": DOUBLE,
-    "i": LONG,
-    "F": DOUBLE.as_pointer(),
-    "I": LONG.as_pointer(),
-    "P": DOUBLE.as_pointer().as_pointer(),
-}
+# f float, i whole number, b condition, F and I flat arrays of them, P array of float arrays: in LLVM's words
+TYPES = {"f": "double", "i": "i64", "b": "i1", "F": "ptr", "I": "ptr", "P": "ptr"}
 ELEMENT = {"F": "f", "I": "i", "P": "F"}
 # functions of one or two floats from the C library, bound under names of our own: the optimiser must leave their bits
 LIBRARY = {
@@ -28,8 +21,16 @@ LIBRARY = {
     "tangent": 1,
     "hyperbolic_tangent": 1,
 }
-INTRINSIC = {"root": "llvm.sqrt", "floor": "llvm.floor"}
-COMPARED = {ast.Lt: "<", ast.LtE: "<=", ast.Gt: ">", ast.GtE: ">=", ast.Eq: "==", ast.NotEq: "!="}
+INTRINSIC = {"root": "sqrt", "floor": "floor"}
+COMPARED: dict[type[ast.cmpop], tuple[str, str]] = {
+    ast.Lt: ("slt", "olt"),
+    ast.LtE: ("sle", "ole"),
+    ast.Gt: ("sgt", "ogt"),
+    ast.GtE: ("sge", "oge"),
+    ast.Eq: ("eq", "oeq"),
+    ast.NotEq: ("ne", "une"),
+}
+COMBINED: dict[type[ast.operator], str] = {ast.Add: "add", ast.Sub: "sub", ast.Mult: "mul", ast.Div: "div"}
 
 
 class NotCompilable(Exception):
@@ -38,19 +39,28 @@ class NotCompilable(Exception):
 
 @dataclass(frozen=True, slots=True)
 class Value:
-    """A value and its kind: a type letter, or b for a condition."""
+    """A value as LLVM's text names it, and its kind."""
 
     kind: str
-    value: Any
+    text: str
+
+    def __str__(self) -> str:
+        return f"{TYPES[self.kind]} {self.text}"
+
+
+def number(value: float | int) -> Value:
+    """A constant; floats by their bits."""
+    if isinstance(value, int):
+        return Value("i", str(int(value)))
+    return Value("f", f"0x{struct.pack('>d', value).hex().upper()}")
 
 
 class Text(Protocol):
     """A text that is being compiled: its functions and constants, and what has been made of them."""
 
-    module: ir.Module
     functions: dict[str, ast.FunctionDef]
     constants: dict[str, float | int]
-    compiled: dict[str, tuple[ir.Function, str, tuple[str, ...]]]
+    declared: dict[str, str]
 
-    def function(self, name: str, kinds: tuple[str, ...]) -> tuple[ir.Function, str]:
-        """The compiled function for these argument kinds, and the kind that it returns."""
+    def function(self, name: str, kinds: tuple[str, ...]) -> tuple[str, tuple[str, ...]]:
+        """What the function compiled for these arguments returns, and the kinds that it takes."""

@@ -4,24 +4,32 @@ from __future__ import annotations
 
 import ast
 
-from llvmlite import ir
-
 from loopsim.native.expressions import Expressions
-from loopsim.native.kinds import LONG, TYPES, Value
+from loopsim.native.kinds import TYPES, Value, number
 
 
 class Lowering(Expressions):
     """Lowers one function."""
 
-    def lower(self) -> None:
-        """The whole body; a function that ends without `return` gives nought."""
+    again = ""
+
+    def lower(self) -> str:
+        """The lines of its body; a function that ends without `return` gives nought."""
+        for name in sorted(self._assigned() & set(self.arguments)):
+            self.store(name, self.arguments[name])
         self.block(self.node.body)
-        if not self.builder.block.is_terminated:
-            self.builder.ret(ir.Constant(TYPES[self.returns], 0))
+        self.lines.end(f"ret {number(0 if self.returns == 'i' else 0.0)}")
+        return self.lines.whole()
+
+    def _assigned(self) -> set[str]:
+        """The locals that the function gives a value."""
+        return {
+            one.id for one in ast.walk(self.node) if isinstance(one, ast.Name) and isinstance(one.ctx, ast.Store)
+        }
 
     def block(self, body: list[ast.stmt]) -> None:
         for statement in body:
-            if self.builder.block.is_terminated:
+            if self.lines.ended:
                 return
             getattr(self, f"on_{type(statement).__name__}", self.refuse)(statement)
 
@@ -32,8 +40,8 @@ class Lowering(Expressions):
         self.value(node.value)
 
     def on_Return(self, node: ast.Return) -> None:
-        value = self.value(node.value) if node.value is not None else Value("i", ir.Constant(LONG, 0))
-        self.builder.ret(self.cast(value, self.returns))
+        value = self.value(node.value) if node.value is not None else number(0)
+        self.lines.end(f"ret {self.cast(value, self.returns)}")
 
     def on_Assign(self, node: ast.Assign) -> None:
         (target,) = node.targets
@@ -42,67 +50,57 @@ class Lowering(Expressions):
             self.store(target.id, value)
             return
         assert isinstance(target, ast.Subscript)
-        kind, place = self.place(target)
-        self.builder.store(self.cast(value, kind), place)
+        place = self.place(target)
+        self.lines.do(f"store {self.cast(value, place.kind)}, ptr {place.text}")
 
     def on_AugAssign(self, node: ast.AugAssign) -> None:
         assert isinstance(node.target, ast.Name)
-        value = self.arithmetic(node.op, self.name(node.target.id), self.value(node.value))
-        self.store(node.target.id, value)
+        self.store(node.target.id, self.arithmetic(node.op, self.name(node.target.id), self.value(node.value)))
 
     def on_If(self, node: ast.If) -> None:
-        test = self.condition(node.test)
+        then, otherwise, after = (self.lines.name(stem) for stem in ("then", "otherwise", "after"))
+        self.lines.choose(self.condition(node.test), then, otherwise if node.orelse else after)
+        self.lines.begin(then)
+        self.block(node.body)
+        self.lines.go(after)
         if node.orelse:
-            with self.builder.if_else(test) as (then, otherwise):
-                with then:
-                    self.block(node.body)
-                with otherwise:
-                    self.block(node.orelse)
-        else:
-            with self.builder.if_then(test):
-                self.block(node.body)
+            self.lines.begin(otherwise)
+            self.block(node.orelse)
+        self.lines.begin(after)
 
     def on_While(self, node: ast.While) -> None:
-        head = self.builder.append_basic_block("head")
-        body = self.builder.append_basic_block("body")
-        after = self.builder.append_basic_block("after")
-        self.builder.branch(head)
-        self.builder.position_at_end(head)
-        self.builder.cbranch(self.condition(node.test), body, after)
-        self.builder.position_at_end(body)
-        self.loops.append(head)
-        self.block(node.body)
-        self.loops.pop()
-        if not self.builder.block.is_terminated:
-            self.builder.branch(head)
-        self.builder.position_at_end(after)
+        head, body, after = (self.lines.name(stem) for stem in ("head", "body", "after"))
+        self.lines.begin(head)
+        self.lines.choose(self.condition(node.test), body, after)
+        self.lines.begin(body)
+        self._repeated(node.body, head)
+        self.lines.go(head)
+        self.lines.begin(after)
+
+    def _repeated(self, body: list[ast.stmt], again: str) -> None:
+        """A loop's body; `continue` goes to `again`."""
+        outer, self.again = self.again, again
+        self.block(body)
+        self.again = outer
 
     def on_Continue(self, node: ast.Continue) -> None:
-        self.builder.branch(self.loops[-1])
+        self.lines.go(self.again)
 
     def on_For(self, node: ast.For) -> None:
         assert isinstance(node.target, ast.Name) and isinstance(node.iter, ast.Call)
         bounds = [self.cast(self.value(one), "i") for one in node.iter.args]
-        first, last = bounds if len(bounds) == 2 else (ir.Constant(LONG, 0), bounds[0])
-        with self.builder.goto_entry_block():
-            counter = self.builder.alloca(LONG)
-        self.builder.store(first, counter)
-        head = self.builder.append_basic_block("head")
-        body = self.builder.append_basic_block("body")
-        step = self.builder.append_basic_block("step")
-        after = self.builder.append_basic_block("after")
-        self.builder.branch(head)
-        self.builder.position_at_end(head)
-        now = self.builder.load(counter)
-        self.builder.cbranch(self.builder.icmp_signed("<", now, last), body, after)
-        self.builder.position_at_end(body)
-        self.store(node.target.id, Value("i", now))
-        self.loops.append(step)
-        self.block(node.body)
-        self.loops.pop()
-        if not self.builder.block.is_terminated:
-            self.builder.branch(step)
-        self.builder.position_at_end(step)
-        self.builder.store(self.builder.add(self.builder.load(counter), ir.Constant(LONG, 1)), counter)
-        self.builder.branch(head)
-        self.builder.position_at_end(after)
+        first, last = bounds if len(bounds) == 2 else (number(0), bounds[0])
+        counter = self.lines.slot("i")
+        self.lines.do(f"store {first}, ptr {counter}")
+        head, body, step, after = (self.lines.name(stem) for stem in ("head", "body", "step", "after"))
+        self.lines.begin(head)
+        now = self.lines.make("i", f"load {TYPES['i']}, ptr {counter}")
+        self.lines.choose(self.compared(ast.Lt, now, last), body, after)
+        self.lines.begin(body)
+        self.store(node.target.id, now)
+        self._repeated(node.body, step)
+        self.lines.begin(step)
+        following: Value = self.lines.make("i", f"add {now}, 1")
+        self.lines.do(f"store {following}, ptr {counter}")
+        self.lines.go(head)
+        self.lines.begin(after)

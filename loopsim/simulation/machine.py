@@ -10,7 +10,7 @@ import importlib
 import linecache
 import math
 import os
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from copy import deepcopy
 from dataclasses import dataclass, field
 from functools import lru_cache
@@ -338,11 +338,20 @@ def _first_needed(machine: Machine, state: RunState, count: int) -> int:
     return max(1, min(state.n[8 + k] for k in range(machine.ND)) - 1)
 
 
-def trends(machine: Machine, state: RunState) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArray]:
-    """Recorded times (r,) and rows (r, NR); starts (k,), lengths (k,) and samples (k, 5, NW) of all pieces."""
+def trends(
+    machine: Machine, state: RunState, places: Sequence[int]
+) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArray]:
+    """Recorded times (r,) and rows (r, NR); starts (k,), lengths (k,) and samples (k, 5, m) of all pieces.
+
+    `places`: the m watched signals wanted. In memory each one's samples stand together.
+    """
     put_aside(machine, state)
-    width = machine.NW
-    pieces = np.concatenate(state.pieces) if state.pieces else np.zeros((0, 2 + 5 * width))
     rows = np.concatenate(state.rows) if state.rows else np.zeros((0, machine.NR + 1))
-    samples = pieces[:, 2:].reshape(len(pieces), 5, width)
-    return rows[:, 0], rows[:, 1:], pieces[:, 0], pieces[:, 1], samples
+    count = sum(len(chunk) for chunk in state.pieces)
+    times, samples, first = np.empty((2, count)), np.empty((len(places), 5, count)), 0
+    for chunk in state.pieces:
+        here = slice(first, first + len(chunk))
+        times[:, here] = chunk[:, :2].T
+        samples[:, :, here] = chunk[:, 2:].reshape(len(chunk), 5, machine.NW)[:, :, places].transpose(2, 1, 0)
+        first += len(chunk)
+    return rows[:, 0], rows[:, 1:], times[0], times[1], samples.transpose(2, 1, 0)

@@ -320,10 +320,10 @@ def _stopped(simulation: Simulation, outcome: Outcome) -> Status:
 
 def _result(simulation: Simulation, status: Status) -> RunResult:
     state, program, model = simulation.state, simulation.program, simulation.model
-    time, rows, starts, lengths, samples = trends_of(simulation.machine, state)
-    columns = {name: rows[:, place] for place, name in enumerate(simulation.recorded)}
     places = [program.watched.index(flat) for flat in simulation.judged.values()]
-    pieces = Pieces(tuple(simulation.judged), starts, lengths, np.ascontiguousarray(samples[:, :, places]))
+    time, rows, starts, lengths, samples = trends_of(simulation.machine, state, places)
+    columns = {name: rows[:, place] for place, name in enumerate(simulation.recorded)}
+    pieces = Pieces(tuple(simulation.judged), starts, lengths, samples)
     units = {name: model.signals[name].unit for name in model.signals}
     trends = Trends(time, columns, units, pieces, status, _log(simulation, pieces), model.assumed, state.statistics())
     skipped = frozenset(k for k, event in enumerate(simulation.scenario.events) if not_applicable(event, model))

@@ -87,7 +87,7 @@ def times(path: Path, factor: float) -> Path:
 
 
 def _less(quartics: FloatArray, level: float) -> FloatArray:
-    lowered = quartics.copy()
+    lowered = quartics.copy(order="K")
     lowered[:, 0] -= level
     return lowered
 
@@ -113,7 +113,8 @@ def between(path: Path, begin: float, end: float, closing: bool = False) -> Path
 
 
 def _taken(path: Path, rows: NDArray[np.intp]) -> Path:
-    return Path(path.start[rows], path.length[rows], path.quartics[rows], path.low[rows], path.high[rows])
+    quartics = path.quartics.T.take(rows, axis=1).T  # each power stays in one stretch of memory
+    return Path(path.start[rows], path.length[rows], quartics, path.low[rows], path.high[rows])
 
 
 def _shares(path: Path, time: FloatArray, instead: FloatArray) -> FloatArray:
@@ -132,15 +133,19 @@ def _value_before(path: Path, first: int, begin: float, tie: float) -> float:
 
 def cut_at(path: Path, shares: FloatArray) -> Path:
     """The path with its parts cut at shares (n, k), nan for none; shares outside the part are left out."""
-    low, high = path.low[:, None], path.high[:, None]
-    inside = (shares > low) & (shares < high)
-    edges = np.concatenate([low, np.sort(np.where(inside, shares, high), axis=1), high], axis=1)
+    inside = (shares > path.low[:, None]) & (shares < path.high[:, None])
+    cut = np.flatnonzero(inside.any(axis=1))
+    if not cut.size:
+        return path
+    low, high = path.low[cut, None], path.high[cut, None]
+    edges = np.concatenate([low, np.sort(np.where(inside[cut], shares[cut], high), axis=1), high], axis=1)
     kept = edges[:, 1:] > edges[:, :-1]
-    kept[:, 0] |= ~kept.any(axis=1)
-    rows, columns = np.nonzero(kept)
-    parts = Path(
-        path.start[rows], path.length[rows], path.quartics[rows], edges[rows, columns], edges[rows, columns + 1]
-    )
+    count = np.ones(len(path), dtype=np.intp)
+    count[cut] = kept.sum(axis=1)
+    rows = np.repeat(np.arange(len(path)), count)
+    parts = _taken(path, rows)
+    places = np.repeat(np.isin(np.arange(len(path)), cut), count)
+    parts.low[places], parts.high[places] = edges[:, :-1][kept], edges[:, 1:][kept]
     return replace(parts, before=path.before)
 
 
