@@ -12,7 +12,7 @@ from loopsim.errors import fail, nearest
 from loopsim.language.units import from_si
 from loopsim.model.choice import Source, scenario_sources, source_of
 from loopsim.model.graph import dead_time_in_loop, influences
-from loopsim.model.numbers import System
+from loopsim.model.numbers import System, system_of
 from loopsim.model.rest import OperatingPoint, all_rests, eigenvalues, rest
 from loopsim.model.types import Model
 from loopsim.results import Cell, Table
@@ -61,7 +61,7 @@ def _steady(source: Source, point: str, every: bool) -> _Steady:
     timed = source.timed(point=point)
     if dead_time_in_loop(timed, influences(timed)):
         return _Steady(law, rests, (None,) * len(rests))
-    system = System(law)
+    system = system_of(law)
     return _Steady(law, rests, tuple(_is_stable(system, one) for one in rests))
 
 

@@ -46,6 +46,10 @@ class Operation:
     operator: str
     arguments: tuple[Expression, ...]
     at: int = field(default=0, compare=False)
+    names: frozenset[str] = field(init=False, compare=False, repr=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "names", _names_of(self.arguments))
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,6 +59,10 @@ class Call:
     function: str
     arguments: tuple[Expression, ...]
     at: int = field(default=0, compare=False)
+    names: frozenset[str] = field(init=False, compare=False, repr=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "names", _names_of(self.arguments))
 
 
 @dataclass(frozen=True, slots=True)
@@ -100,6 +108,15 @@ def transform(tree: Expression, change: Callable[[Expression], Expression]) -> E
     return change(rebuild(tree, below))
 
 
-def names_in(tree: Expression) -> set[str]:
+def names_in(tree: Expression) -> frozenset[str]:
     """All names that occur in a tree."""
-    return {node.name for node in walk(tree) if isinstance(node, Name)}
+    if isinstance(tree, Name):
+        return frozenset((tree.name,))
+    if isinstance(tree, Rate):
+        return names_in(tree.argument)
+    return tree.names if isinstance(tree, Operation | Call) else frozenset()
+
+
+def _names_of(arguments: tuple[Expression, ...]) -> frozenset[str]:
+    """The names in all arguments; kept with each node, since they are asked for again and again."""
+    return frozenset[str]().union(*map(names_in, arguments))

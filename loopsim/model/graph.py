@@ -29,17 +29,17 @@ def _is_answer(name: str) -> bool:
     return name.endswith((".takes", ".up", ".down"))
 
 
-def _readers(model: Model) -> list[tuple[str, set[str], str]]:
+def _readers(model: Model) -> list[tuple[str, frozenset[str], str]]:
     """Every name with the names that it is computed from and its tag."""
     found = [(name, names_in(one.tree), one.tag) for name, one in model.assignments.items() if not _is_answer(name)]
     found += [(name, names_in(one.rate), one.tag) for name, one in model.states.items()]
     found += [(name, names_in(one.residual), one.tag) for name, one in model.implicits.items()]
-    found += [(name, set[str](), one.tag) for name, one in model.memory.items()]
+    found += [(name, frozenset[str](), one.tag) for name, one in model.memory.items()]
     for name, dead_time in model.dead_times.items():
-        swept = {dead_time.swept} if dead_time.swept else set()
+        swept = frozenset({dead_time.swept}) if dead_time.swept else frozenset()
         found.append((name, names_in(dead_time.argument) | names_in(dead_time.lag) | swept, dead_time.tag))
     for name, latch in model.latches.items():
-        argument = names_in(latch.argument) if latch.argument is not None else set()
+        argument = names_in(latch.argument) if latch.argument is not None else frozenset()
         found.append((name, names_in(latch.condition) | argument, latch.tag))
     for task in model.scans:
         found += [(one.name, statement_names(one), task.tag) for one in task.statements]

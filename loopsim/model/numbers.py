@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Collection, Mapping
 from dataclasses import dataclass, field
-from functools import partial
+from functools import lru_cache, partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -150,6 +150,12 @@ class System:
             if np.array_equal(before, u, equal_nan=True):
                 break
         return np.nan_to_num(u, nan=0.0, posinf=0.0, neginf=0.0)
+
+
+@lru_cache(maxsize=32)
+def system_of(model: Model) -> System:
+    """The system of a model, made once."""
+    return System(model)
 
 
 def _total(line: Line, values: Mapping[str, float], slopes: dict[str, Slopes]) -> Slopes:

@@ -28,7 +28,7 @@ class Loop:
 Step = Assignment | Loop | DeadTime | Noise | Latch
 
 
-def dependencies(model: Model, name: str) -> set[str]:
+def dependencies(model: Model, name: str) -> frozenset[str]:
     """What must be known before `name`, itself not counted unless it is an unknown."""
     if name in model.assignments:
         return names_in(model.assignments[name].tree)
@@ -41,8 +41,8 @@ def dependencies(model: Model, name: str) -> set[str]:
     if name in model.latches:
         latch = model.latches[name]
         before = names_in(latch.condition)
-        return before | (names_in(latch.argument) if latch.argument is not None else set())
-    return set()
+        return before | (names_in(latch.argument) if latch.argument is not None else frozenset())
+    return frozenset()
 
 
 def ordered(model: Model, wanted: Iterable[str]) -> list[Step]:
@@ -178,12 +178,12 @@ def _read_by(task: ScanTask, assignments: Mapping[str, Assignment]) -> set[str]:
     return found
 
 
-def statement_names(statement: Assignment | ScanLatch) -> set[str]:
+def statement_names(statement: Assignment | ScanLatch) -> frozenset[str]:
     """The names that a statement of a scan reads."""
     if isinstance(statement, Assignment):
         return names_in(statement.tree)
     before = names_in(statement.condition)
-    return before | (names_in(statement.argument) if statement.argument is not None else set())
+    return before | (names_in(statement.argument) if statement.argument is not None else frozenset())
 
 
 def sorted_statements(task: ScanTask) -> list[Assignment | ScanLatch]:

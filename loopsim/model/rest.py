@@ -14,7 +14,7 @@ from loopsim.errors import ComputationError, Problem
 from loopsim.language.evaluate import evaluate
 from loopsim.language.tree import Name
 from loopsim.language.units import from_si
-from loopsim.model.numbers import FloatArray, System
+from loopsim.model.numbers import FloatArray, System, system_of
 from loopsim.model.types import Controller, Model
 
 STEPS = 600
@@ -40,7 +40,7 @@ class Unreached:
     sentence: str
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class OperatingPoint:
     """Values at rest of every name [SI], and set points out of reach.
 
@@ -57,7 +57,7 @@ def rest(model: Model, guess: FloatArray | None = None) -> OperatingPoint:
 
     Raises `ComputationError` where there is no rest, with the state that keeps moving.
     """
-    system = System(model)
+    system = system_of(model)
     begin = system.starts() if guess is None else guess
     wish = _wished(model, begin) if model.controllers else None
     u = settled(system, begin if wish is None else wish.unknowns)
@@ -275,7 +275,7 @@ def all_rests(model: Model) -> list[OperatingPoint]:
     stable hide. Each is followed in time and by Newton's method. What nothing determines keeps its start. Raises
     `ComputationError` where there is no rest at all; that there are no more rests is not proven.
     """
-    system, first = System(model), rest(model)
+    system, first = system_of(model), rest(model)
     found = [np.array([first.values[name] for name in system.unknowns])]
     for begin in _starts(system, found[0]):
         _look(system, begin, found)

@@ -105,7 +105,7 @@ def _compiled(text: str, entries: Mapping[str, tuple[str, ...]], machine: Any) -
         module.entry(name, kinds)
     parsed = llvm.parse_assembly(module.llvm())
     parsed.verify()
-    # a tenth slower code than the optimiser's own second level, in a sixth of its time: a run takes less than that saves
+    # a tenth slower code than from the optimiser's own second level, in a sixth of its time
     builder = llvm.create_pass_builder(machine, llvm.create_pipeline_tuning_options())
     passes = llvm.create_new_module_pass_manager()
     passes.add_sroa_pass()

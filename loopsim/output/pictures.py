@@ -2,7 +2,12 @@
 
 from __future__ import annotations
 
+import multiprocessing
+import os
+import sys
 import textwrap
+from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -29,6 +34,23 @@ LEFT, RIGHT = 0.09, 0.84  # margins as shares: room for axis labels and the lege
 ROW = 0.13  # inches: one row of marks or notes
 LETTER = 0.06  # inches: the width of a letter of a mark
 FARTHEST = 0.7  # of the curves' range: a limit farther off is told by an arrow instead of squeezing the curves
+
+
+@contextmanager
+def drawing_beside(figures: Mapping[Path, Figure]) -> Iterator[None]:
+    """Pictures of several figures by their stems, drawn while the caller does something else.
+
+    In processes of their own where a process can be copied, since drawing takes longer than most runs.
+    """
+    if len(figures) < 2 or sys.platform != "linux":
+        for stem, figure in figures.items():
+            write_pictures(figure, stem)
+        yield
+        return
+    with multiprocessing.get_context("fork").Pool(min(len(figures), os.cpu_count() or 1)) as pool:
+        drawn = pool.starmap_async(write_pictures, [(figure, stem) for stem, figure in figures.items()], 1)
+        yield
+        drawn.get()
 
 
 def write_pictures(figure: Figure, stem: Path) -> list[Path]:

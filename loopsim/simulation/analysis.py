@@ -77,7 +77,7 @@ class Analysis:
             wanted |= names_in(tree)
         return {name for name in wanted | set(model.latches) if not name.endswith("'")}
 
-    def _below(self, name: str) -> set[str] | None:
+    def _below(self, name: str) -> frozenset[str] | None:
         model = self.model
         if name in model.states or name in model.dead_times or name in model.latches or name in self.wishes.moving:
             return None
@@ -85,7 +85,7 @@ class Analysis:
             return names_in(model.assignments[name].tree)
         if name in model.implicits:
             return names_in(model.implicits[name].residual)
-        return set()
+        return frozenset()
 
     def _scale(self, name: str) -> float:
         """The size in SI of the unit that a name is written in; for a formula, of what it is made of."""
@@ -167,20 +167,20 @@ class Analysis:
         steps = [self.order[place] for place in sorted(found)]
         return [step for step in steps if not (isinstance(step, Assignment) and step.name in self.settled)]
 
-    def _reads(self, step: Step) -> set[str]:
+    def _reads(self, step: Step) -> frozenset[str]:
         if isinstance(step, Assignment):
-            return set() if step.name in self.settled else names_in(self.trees[step.name])
+            return frozenset() if step.name in self.settled else names_in(self.trees[step.name])
         if isinstance(step, Loop):
             inner = [self.trees[one.name] for one in step.inner]
             limits = [end for low, high, _ in step.limits for end in (low, high) if end is not None]
-            return {name for tree in (*inner, *self.residuals(step), *limits) for name in names_in(tree)}
+            return frozenset(name for tree in (*inner, *self.residuals(step), *limits) for name in names_in(tree))
         if isinstance(step, DeadTime):
             return names_in(step.lag)
         if isinstance(step, Noise):
             return names_in(step.every)
         assert isinstance(step, Latch)
         before = names_in(step.condition)
-        return before | (names_in(step.argument) if step.argument is not None else set())
+        return before | (names_in(step.argument) if step.argument is not None else frozenset())
 
     def _trees_of(self, step: Step) -> list[Expression]:
         if isinstance(step, Assignment):

@@ -18,7 +18,7 @@ ARRAYS = "x, m, p, b, h, n, z"
 MOTION = ("base", "slope", "from", "size", "period", "phase")
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Program:
     """Generated text and the places of everything in its arrays.
 

@@ -11,7 +11,7 @@ from loopsim.errors import ComputationError, Problem, Problems, fail, nearest
 from loopsim.language.dimensions import Dimension
 from loopsim.language.units import DIMENSIONLESS, PERCENT, Unit, difference_of, from_si, parse_unit
 from loopsim.model.assemble import assemble
-from loopsim.model.numbers import FloatArray, System
+from loopsim.model.numbers import FloatArray, system_of
 from loopsim.model.rest import OperatingPoint, rest
 from loopsim.model.scales import si_value
 from loopsim.model.types import Model
@@ -130,7 +130,7 @@ def _linear(
 
     Returns A of shape (n, n), b (n,), c (n,), d, and the diagonal of M (n,).
     """
-    system, values = System(law), point.values
+    system, values = system_of(law), point.values
     count = len(system.unknowns)
     by_source = system.carried(values, {source: {0: 1.0}}, held=(source,))
     seeds = {name: {place: 1.0} for place, name in enumerate(system.unknowns)}

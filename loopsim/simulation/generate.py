@@ -139,10 +139,10 @@ def _listed(bodies: Bodies, function: str, target: str, names: list[str]) -> str
     return bodies.function(f"{function}(t, side, {ARRAYS}, {target})", lines)
 
 
-def _reads(bodies: Bodies, name: str) -> set[str]:
+def _reads(bodies: Bodies, name: str) -> frozenset[str]:
     if name.startswith("into "):
         return names_in(bodies.arguments[name.removeprefix("into ")])
-    return {name}
+    return frozenset((name,))
 
 
 # ---------------------------------------------------------------- switches

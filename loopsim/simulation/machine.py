@@ -161,11 +161,11 @@ def _sizes(text: str) -> dict[str, int]:
 # ---------------------------------------------------------------- runs
 def start(
     machine: Machine,
-    x: list[float],
-    m: list[float],
-    p: list[float],
-    z: list[list[float]],
-    floors: list[float],
+    x: Sequence[float],
+    m: Sequence[float],
+    p: Sequence[float],
+    z: Sequence[Sequence[float]],
+    floors: Sequence[float],
     first_positions: tuple[float, ...],
     relative: float = RELATIVE,
 ) -> RunState:
@@ -182,10 +182,10 @@ def start(
         flat += numbers
     n += offsets + [len(numbers) for numbers in z]
     stride = 2 + 5 * sizes.NW
-    arrays: list[list[Any]] = [
+    arrays: list[Sequence[Any]] = [
         [0.0, 1.0, 0.0, 0.0, *([0.0] * 12), *([-1.0] * sizes.NC)],
         [0] * 16,
-        *(x, m, p, list(first_positions)),
+        *(x, m, p, first_positions),
         [0.0] * (stride * CAPACITY),
         n,
         flat or [0.0],
@@ -286,7 +286,7 @@ def _passed(argument: Any, held: list[Any]) -> Any:
     return argument
 
 
-def _array(machine: Machine, values: list[Any]) -> Any:
+def _array(machine: Machine, values: Sequence[Any]) -> Any:
     """Numbers as the inner loop holds them: a list, or a numpy array for machine code."""
     if machine.native is None:
         return list(values)
@@ -348,10 +348,11 @@ def trends(
     put_aside(machine, state)
     rows = np.concatenate(state.rows) if state.rows else np.zeros((0, machine.NR + 1))
     count = sum(len(chunk) for chunk in state.pieces)
-    times, samples, first = np.empty((2, count)), np.empty((len(places), 5, count)), 0
+    columns = [2 + part * machine.NW + place for place in places for part in range(5)]
+    times, samples, first = np.empty((2, count)), np.empty((len(columns), count)), 0
     for chunk in state.pieces:
         here = slice(first, first + len(chunk))
         times[:, here] = chunk[:, :2].T
-        samples[:, :, here] = chunk[:, 2:].reshape(len(chunk), 5, machine.NW)[:, :, places].transpose(2, 1, 0)
+        samples[:, here] = chunk.take(columns, axis=1).T
         first += len(chunk)
-    return rows[:, 0], rows[:, 1:], times[0], times[1], samples.transpose(2, 1, 0)
+    return rows[:, 0], rows[:, 1:], times[0], times[1], samples.reshape(len(places), 5, count).T

@@ -105,10 +105,11 @@ def prepare(
     conditions = program.conditions
     machine = build(program.text, native)
     first = start_values(model, program, law, point)
-    machine.prepare(first.p)
+    p = list(first.p)
+    machine.prepare(p)
     lasts = seconds(scenario.lasts)
-    numbers = draws(model, first.p, program, machine, scenario.seed, run, lasts)
-    state = start(machine, first.x, first.m, first.p, numbers, first.floors, program.starts)
+    numbers = draws(model, p, program, machine, scenario.seed, run, lasts)
+    state = start(machine, first.x, first.m, p, numbers, first.floors, program.starts)
     actions = Actions(model, scenario.events)
     simulation = Simulation(model, program, machine, state, scenario, lasts, actions, watched, tuple(recorded))
     simulation.waiting = owners

@@ -4,10 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import lru_cache
 
 from loopsim.language.evaluate import evaluate
 from loopsim.language.tree import Expression, names_in
-from loopsim.model.numbers import System
+from loopsim.model.numbers import system_of
 from loopsim.model.order import Loop, ordered
 from loopsim.model.primitives import FOR_EVER
 from loopsim.model.rest import OperatingPoint
@@ -19,15 +20,16 @@ from loopsim.simulation.bodies import Program
 class Start:
     """The arrays x, m, p of a run at its first instant, and the size below which changes of a state do not matter."""
 
-    x: list[float]
-    m: list[float]
-    p: list[float]
-    floors: list[float]
+    x: tuple[float, ...]
+    m: tuple[float, ...]
+    p: tuple[float, ...]
+    floors: tuple[float, ...]
 
 
+@lru_cache(maxsize=64)
 def start_values(model: Model, program: Program, law: Model, point: OperatingPoint | None) -> Start:
-    """The first values of a time model; `point` is the rest of the law model, None for `starts: given`."""
-    system = System(law)
+    """The first values of a time model, told once; `point` is the rest of the law model, None for `starts: given`."""
+    system = system_of(law)
     known = dict(point.values) if point is not None else system.values(system.starts())
     steady = point is not None
     values: dict[str, float] = {name: slot.value for name, slot in model.slots.items()}
@@ -37,14 +39,14 @@ def start_values(model: Model, program: Program, law: Model, point: OperatingPoi
     for name, memory in model.memory.items():
         values[name] = outside.values[name] = _memory(memory, known, outside, steady)
     _latches(model, outside, values, steady)
-    x = [values[name] for name in program.states]
-    m = [_stored(name, values, outside) for name in program.memory]
+    x = tuple(values[name] for name in program.states)
+    m = tuple(_stored(name, values, outside) for name in program.memory)
     p = [0.0] * program.size_of_p
     for name, slot in model.slots.items():
         p[program.parameters[name]] = slot.value
     for name, place in program.motion.items():
         p[place : place + 6] = [model.slots[name].value, 0.0, 0.0, 0.0, 1.0, 0.0]
-    return Start(x, m, p, [_floor(model, name, values) for name in program.states])
+    return Start(x, m, tuple(p), tuple(_floor(model, name, values) for name in program.states))
 
 
 def _floor(model: Model, name: str, values: Mapping[str, float]) -> float:

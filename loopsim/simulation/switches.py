@@ -102,7 +102,7 @@ class Switches:
         return Call("switched", (Number(float(number)), greater, smaller))
 
 
-def moving_names(name_of: Callable[[str], set[str] | None]) -> Callable[[str], bool]:
+def moving_names(name_of: Callable[[str], frozenset[str] | None]) -> Callable[[str], bool]:
     """Whether a name can change inside a step; `name_of` gives what it depends on, None for what moves by itself."""
     known: dict[str, bool] = {}
 

@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loopsim.results import FloatArray, Pieces
-from loopsim.study.polynomials import coefficients, derivative, hull, sign_changes, value
+from loopsim.study.polynomials import changing, coefficients, derivative, hull, value
 
 ROUNDING = 1e-12  # relative: two values this near are the same
 STILL = 1e-6  # of the largest movement: what solvers leave of a signal at rest is no reversal
@@ -131,32 +131,33 @@ def _value_before(path: Path, first: int, begin: float, tie: float) -> float:
     return float(path.last()[first - 1])
 
 
-def cut_at(path: Path, shares: FloatArray) -> Path:
-    """The path with its parts cut at shares (n, k), nan for none; shares outside the part are left out."""
-    inside = (shares > path.low[:, None]) & (shares < path.high[:, None])
-    cut = np.flatnonzero(inside.any(axis=1))
-    if not cut.size:
+def cut_at(path: Path, rows: NDArray[np.intp], shares: FloatArray) -> Path:
+    """The path with its parts `rows` (r,) cut at shares (r, k), nan for none; shares outside the part do not count."""
+    low, high = path.low[rows, None], path.high[rows, None]
+    inside = (shares > low) & (shares < high)
+    if not inside.any():
         return path
-    low, high = path.low[cut, None], path.high[cut, None]
-    edges = np.concatenate([low, np.sort(np.where(inside[cut], shares[cut], high), axis=1), high], axis=1)
+    edges = np.concatenate([low, np.sort(np.where(inside, shares, high), axis=1), high], axis=1)
     kept = edges[:, 1:] > edges[:, :-1]
-    count = np.ones(len(path), dtype=np.intp)
-    count[cut] = kept.sum(axis=1)
-    rows = np.repeat(np.arange(len(path)), count)
-    parts = _taken(path, rows)
-    places = np.repeat(np.isin(np.arange(len(path)), cut), count)
+    kept[:, 0] |= ~kept.any(axis=1)
+    count, cut = np.ones(len(path), dtype=np.intp), np.zeros(len(path), dtype=np.bool_)
+    count[rows], cut[rows] = kept.sum(axis=1), True
+    parts = _taken(path, np.repeat(np.arange(len(path)), count))
+    places = np.repeat(cut, count)
     parts.low[places], parts.high[places] = edges[:, :-1][kept], edges[:, 1:][kept]
     return replace(parts, before=path.before)
 
 
 def cut_at_turns(path: Path) -> Path:
     """The path in parts on each of which it only rises or only falls."""
-    return cut_at(path, sign_changes(derivative(path.quartics)))
+    return cut_at(path, *changing(derivative(path.quartics)))
 
 
 def cut_at_levels(path: Path, *levels: float) -> Path:
     """The path in parts on each of which it stays on one side of every level."""
-    return cut_at(path, np.concatenate([sign_changes(_less(path.quartics, level)) for level in levels], axis=1))
+    for level in levels:
+        path = cut_at(path, *changing(_less(path.quartics, level)))
+    return path
 
 
 # ---------------------------------------------------------------- values

@@ -70,15 +70,19 @@ def sign_changes(polynomials: FloatArray) -> FloatArray:
 
     Rising in each row, nan where there are fewer than d. A polynomial that only touches 0 from below does not pass.
     """
-    count, size = polynomials.shape
-    found = np.full((count, size - 1), np.nan)
-    if size == 1 or not count:
-        return found
+    found = np.full((len(polynomials), polynomials.shape[1] - 1), np.nan)
+    rows, shares = changing(polynomials)
+    found[rows] = shares
+    return found
+
+
+def changing(polynomials: FloatArray) -> tuple[NDArray[np.intp], FloatArray]:
+    """Those that may change sign: their rows (r,), and where they do, (r, d) as in `sign_changes`."""
     low, high = hull(polynomials)
     rows = np.flatnonzero((low <= 0) & (high > 0))
-    if rows.size:
-        found[rows] = _changes(polynomials[rows])
-    return found
+    if polynomials.shape[1] == 1 or not rows.size:
+        return rows[:0], np.zeros((0, polynomials.shape[1] - 1))
+    return rows, _changes(polynomials[rows])
 
 
 def _changes(polynomials: FloatArray) -> FloatArray:
