@@ -221,8 +221,10 @@ def standard_deviation(path: Path) -> float:
 
 def _integrals(path: Path, power: int) -> FloatArray:
     width = path.high - path.low
-    values = value(path.quartics, path.low[:, None] + NODES * width[:, None])
-    return (values**power @ WEIGHTS) * width * path.length
+    total = np.zeros(len(path))
+    for node, weight in zip(NODES, WEIGHTS, strict=True):
+        total += weight * value(path.quartics, path.low + node * width) ** power
+    return total * width * path.length
 
 
 # ---------------------------------------------------------------- movement
