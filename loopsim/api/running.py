@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
@@ -81,11 +81,18 @@ def _document(one: Judgement, trends: Mapping[str, str]) -> dict[str, Any]:
     return {**document, **point, "version": __version__, "seed": one.scenario.seed}
 
 
-def run(paths: Sequence[Path], strategy: str = "", points: Sequence[str] = (), native: bool = True) -> RunReport:
+def run(
+    paths: Sequence[Path],
+    strategy: str = "",
+    points: Sequence[str] = (),
+    native: bool = True,
+    judged: Callable[[Judgement], None] = lambda one: None,
+) -> RunReport:
     """Run and judge every strategy of the scenarios (files, or folders that hold them).
 
     `points`: operating points of the plant, `all` for every one of them; by default those that the scenario names, or
-    the plant's own values. `native`: compiled, else interpreted (the same bits).
+    the plant's own values. `native`: compiled, else interpreted (the same bits). `judged` is called with each
+    judgement as soon as it stands.
 
     Raises `InputError`; a strategy that cannot be computed is told in its column, and the others go on.
     """
@@ -102,10 +109,11 @@ def run(paths: Sequence[Path], strategy: str = "", points: Sequence[str] = (), n
         _check(*plan)
     # what any of the scenarios judges is kept in all of them, so that they share one program
     names = tuple(dict.fromkeys(name for _, scenario, _, _ in plans for name in rule_names(scenario)))
-    judgements = [
-        Judgement(scenario, point, run_id(path, scenario, point), _judged(scenario, sources, point, names, native))
-        for path, scenario, sources, point in plans
-    ]
+    judgements = []
+    for path, scenario, sources, point in plans:
+        strategies = _judged(scenario, sources, point, names, native)
+        judgements.append(Judgement(scenario, point, run_id(path, scenario, point), strategies))
+        judged(judgements[-1])
     every = [one for judgement in judgements for one in judgement.strategies]
     several = any(len(one.strategies) > 1 for one in judgements)
     comparison = compare(every) if several and any(one.verdicts for one in every) else None

@@ -10,7 +10,7 @@ import click
 
 from loopsim import api
 from loopsim.cli.words import CAUTION
-from loopsim.output.folder import write_run
+from loopsim.output.folder import RunFolder
 from loopsim.output.json_text import json_text
 from loopsim.output.text import render
 
@@ -43,8 +43,14 @@ def command(
     if cache is not None:
         os.environ["LOOPSIM_CACHE"] = str(cache)
     begun = time.perf_counter()
-    report = api.run(scenarios, strategy, tuple(points.split(",")) if points else (), native=not interpreted)
-    written = write_run(report, out) if out is not None else None
+    chosen = tuple(points.split(",")) if points else ()
+    written = None
+    if out is not None:
+        with RunFolder(out) as folder:
+            report = api.run(scenarios, strategy, chosen, not interpreted, folder.draw)
+            written = folder.finish(report)
+    else:
+        report = api.run(scenarios, strategy, chosen, not interpreted)
     if as_json:
         click.echo(json_text(report.json(written)))
     else:

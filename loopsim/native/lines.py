@@ -12,13 +12,13 @@ class Lines:
         self.slots: list[str] = []
         self.text: list[str] = []
         self.count = 0
-        self.label = "start"
+        self.label = "body."
         self.ended = False
 
     def name(self, stem: str) -> str:
-        """A name not used yet."""
+        """A name not used yet; the dot keeps it apart from Python's."""
         self.count += 1
-        return f"{stem}{self.count}"
+        return f"{stem}.{self.count}"
 
     def do(self, instruction: str) -> None:
         """An instruction without a value."""
@@ -56,4 +56,4 @@ class Lines:
 
     def whole(self) -> str:
         """All lines of the body."""
-        return "\n".join(["entry:", *self.slots, "br label %start", "start:", *self.text])
+        return "\n".join(["slots.:", *self.slots, "br label %body.", "body.:", *self.text])

@@ -23,9 +23,7 @@ class Lowering(Expressions):
 
     def _assigned(self) -> set[str]:
         """The locals that the function gives a value."""
-        return {
-            one.id for one in ast.walk(self.node) if isinstance(one, ast.Name) and isinstance(one.ctx, ast.Store)
-        }
+        return {one.id for one in ast.walk(self.node) if isinstance(one, ast.Name) and isinstance(one.ctx, ast.Store)}
 
     def block(self, body: list[ast.stmt]) -> None:
         for statement in body:

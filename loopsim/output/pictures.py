@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-import multiprocessing
 import os
 import sys
 import textwrap
-from collections.abc import Iterator, Mapping
-from contextlib import contextmanager
+from concurrent.futures import Executor, Future, ProcessPoolExecutor
+from multiprocessing import get_context
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -15,7 +14,7 @@ from loopsim.results import Curve, Figure, Panel
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
-    from matplotlib.figure import Figure as Drawing
+    from matplotlib.figure import Figure as Page
 
 PAGE = 150  # letters of a note in one line
 # a `$` in a text of the user's is a dollar, not mathematics
@@ -36,21 +35,43 @@ LETTER = 0.06  # inches: the width of a letter of a mark
 FARTHEST = 0.7  # of the curves' range: a limit farther off is told by an arrow instead of squeezing the curves
 
 
-@contextmanager
-def drawing_beside(figures: Mapping[Path, Figure]) -> Iterator[None]:
-    """Pictures of several figures by their stems, drawn while the caller does something else.
+class Drawing:
+    """Pictures drawn beside other work, in processes of their own where a process can be copied, else at once.
 
-    In processes of their own where a process can be copied, since drawing takes longer than most runs.
+    Drawing takes longer than most runs.
     """
-    if len(figures) < 2 or sys.platform != "linux":
-        for stem, figure in figures.items():
+
+    def __init__(self) -> None:
+        self._pool: Executor | None = None
+        self._drawn: list[Future[list[Path]]] = []
+
+    def __enter__(self) -> Drawing:
+        if sys.platform == "linux":
+            count = os.cpu_count() or 1
+            self._pool = ProcessPoolExecutor(count, get_context("fork"))
+            for _ in range(count):
+                self._pool.submit(_ready)
+        return self
+
+    def draw(self, figure: Figure, stem: Path) -> None:
+        """Write `stem.png` and `stem.svg` by the end of the `with`."""
+        if self._pool is None:
             write_pictures(figure, stem)
-        yield
-        return
-    with multiprocessing.get_context("fork").Pool(min(len(figures), os.cpu_count() or 1)) as pool:
-        drawn = pool.starmap_async(write_pictures, [(figure, stem) for stem, figure in figures.items()], 1)
-        yield
-        drawn.get()
+        else:
+            self._drawn.append(self._pool.submit(write_pictures, figure, stem))
+
+    def __exit__(self, kind: object, *_: object) -> None:
+        if self._pool is not None:
+            self._pool.shutdown(wait=kind is None, cancel_futures=kind is not None)
+        if kind is not None:
+            return
+        for one in self._drawn:
+            one.result()
+
+
+def _ready() -> None:
+    import matplotlib.backends.backend_agg
+    import matplotlib.backends.backend_svg  # noqa: F401
 
 
 def write_pictures(figure: Figure, stem: Path) -> list[Path]:
@@ -73,13 +94,13 @@ def write_pictures(figure: Figure, stem: Path) -> list[Path]:
     return [png, svg]
 
 
-def _drawn(figure: Figure) -> Drawing:
-    from matplotlib.figure import Figure as Drawing
+def _drawn(figure: Figure) -> Page:
+    from matplotlib.figure import Figure as Page
 
     rows, notes = _mark_rows(figure), [line for note in figure.notes for line in textwrap.wrap(note, PAGE)]
     head, foot = HEAD + ROW * (max(rows, default=0) + 1), FOOT + ROW * len(notes)
     height = head + foot + HEIGHT * len(figure.panels)
-    drawing = Drawing(figsize=(WIDTH, height))
+    drawing = Page(figsize=(WIDTH, height))
     # fixed margins, without laying out twice
     drawing.subplots_adjust(left=LEFT, right=RIGHT, bottom=foot / height, top=1 - head / height, hspace=0.14)
     axes = list(drawing.subplots(len(figure.panels), 1, sharex=True, squeeze=False)[:, 0])

@@ -44,8 +44,9 @@ def count_down(n):
     return total
 
 
-def sums(a, n):
+def sums(a, entry):
     total = 0.0
+    n = entry
     for i in range(NX):
         total = total + a[i] * HALF
     for i in range(1, n):
