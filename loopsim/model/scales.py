@@ -6,10 +6,15 @@ from collections.abc import Iterable
 
 from loopsim.documents.types import (
     ByChoice,
+    Held,
+    Input,
+    Output,
     PairValue,
+    Parameter,
     Quantity,
     UnitSpec,
     UnitText,
+    Unknown,
     Value,
     Word,
 )
@@ -116,8 +121,10 @@ def _specs(layout: Layout, elements: dict[str, Elements], tag: str) -> dict[str,
     """Element name -> its `unit:` and the index it stands for."""
     block = layout.instances[tag].block
     found: dict[str, tuple[UnitSpec, str]] = {}
-    for entries in (block.outputs, block.parameters, block.solve, block.memory, block.states, block.inputs):
-        for entry in entries:
+    groups = (block.outputs, block.parameters, block.solve, block.memory, block.states, block.inputs)
+    for group in groups:
+        entries: tuple[Output | Parameter | Unknown | Held | Input, ...] = group
+        for entry in sorted(entries, key=lambda one: not elements[tag].generic(one.key)):
             for element in elements[tag].of(entry.key):
                 index = element.rpartition(".")[2] if entry.key.index is not None else ""
                 found[element] = (entry.unit, index)

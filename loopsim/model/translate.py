@@ -17,7 +17,7 @@ from loopsim.model.draft import Absent
 from loopsim.model.instance import Part
 from loopsim.model.primitives import primitive
 from loopsim.model.scales import FALSE_WORDS, TRUE_WORDS
-from loopsim.model.types import PRIME
+from loopsim.model.types import PRIME, Assignment
 
 
 class Translator(Part):
@@ -140,13 +140,26 @@ class Translator(Part):
         return Call("where", (*kept, otherwise), node.at) if kept else otherwise
 
     def _over_repeat(self, node: Call, scan: bool) -> Expression:
+        """Taken in pairs, and those in pairs again, so that the tree of a long repeat stays flat."""
         terms = [self.tree(node.arguments[0], one, scan) for one in self.elements.indices]
-        if node.function != "sum":
-            return Call(node.function, tuple(terms), node.at)
-        total = terms[0]
-        for term in terms[1:]:
-            total = Operation("+", (total, term), node.at)
-        return total
+        while len(terms) > 1:
+            pairs = list(zip(terms[::2], terms[1::2], strict=False))
+            alone = terms[2 * len(pairs) :]
+            if node.function == "sum":
+                terms = [*(Operation("+", pair, node.at) for pair in pairs), *alone]
+            else:
+                terms = [*(self._named(Call(node.function, pair, node.at), scan) for pair in pairs), *alone]
+        return terms[0]
+
+    def _named(self, tree: Expression, scan: bool) -> Expression:
+        """A tree under a name of its own: slopes of a least or greatest value repeat its parts."""
+        name = self.draft.fresh(self.tag, "pair")
+        if not scan:
+            self.draft.assign(name, self.tag, tree, self.where)
+            return Name(name)
+        name += PRIME
+        self.statements[name] = Assignment(name, self.tag, tree, self.where)
+        return Name(name)
 
     # ------------------------------------------------------------ names
     def _name(self, node: Name, index: str, scan: bool) -> Expression:

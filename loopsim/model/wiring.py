@@ -45,8 +45,11 @@ class Wiring:
 
 
 def ports_of(instance: Instance, elements: Elements) -> Iterator[Port]:
-    """The ports of one instance, repeats opened, single elements' own entries winning."""
-    groups: tuple[tuple[Input | Output, ...], ...] = (instance.block.inputs, instance.block.outputs)
+    """The ports of one instance, repeats opened, single elements' own entries winning.
+
+    Of an input and the output that shows it, the input comes last.
+    """
+    groups: tuple[tuple[Input | Output, ...], ...] = (instance.block.outputs, instance.block.inputs)
     for entries in groups:
         found: dict[str, Port] = {}
         for entry in sorted(entries, key=lambda one: not elements.generic(one.key)):

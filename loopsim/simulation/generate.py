@@ -157,9 +157,12 @@ def _switches(bodies: Bodies) -> str:
     wanted |= {name for tree in trees for name in names_in(tree)} | analysis.switch_names(trees)
     lines = bodies.motion_lines()
     for step in analysis.needed(wanted, sticky=True):
+        solved = bodies.step_lines(step, writer) if isinstance(step, Loop) else []
+        # a loop is solved with its switches as they stand, and then they are compared with what came out
+        lines += solved
         for tree in _trees(bodies, step):
             lines += _compared(bodies, tree, writer, done)
-        lines += bodies.step_lines(step, writer)
+        lines += [] if solved else bodies.step_lines(step, writer)
     for tree in trees:
         lines += _compared(bodies, tree, writer, done)
     for number in range(len(analysis.switches.found)):

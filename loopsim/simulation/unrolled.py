@@ -1,4 +1,4 @@
-"""Sums over states of Dormand and Prince's method written out for a model's number of states.
+"""Sums over states of Dormand and Prince's method, written out where a model has few.
 
 Sources: Dormand, Prince, J. Comput. Appl. Math. 6 (1980) 19-26; dense output: Hairer, Norsett, Wanner, Solving Ordinary
 Differential Equations I, II.6.
@@ -6,7 +6,7 @@ Differential Equations I, II.6.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Sequence
 
 STAGES: dict[str, tuple[tuple[str, float], ...]] = {
     "stage_2": (("k1", 1 / 5),),
@@ -40,29 +40,51 @@ DENSE = (
 )
 
 
-def _sum(terms: tuple[tuple[str, float], ...], place: int) -> str:
+MOST_LINES = 16  # states: with more of them a loop runs as fast and is compiled in a fraction of the time
+
+
+def _sum(terms: tuple[tuple[str, float], ...], place: str) -> str:
     return " + ".join(f"{factor!r}*{name}[{place}]" for name, factor in terms)
 
 
+def _each(count: int, lines: Callable[[str], Sequence[str]]) -> Iterator[str]:
+    """The lines for every state, by its number or in a loop."""
+    if count > MOST_LINES:
+        yield "    for i in range(NX):"
+        yield from (f"        {line}" for line in lines("i"))
+    else:
+        yield from (f"    {line}" for number in range(count) for line in lines(str(number)))
+
+
 def unrolled(count: int) -> Iterator[str]:
-    """Stage sums, error norm and dense output as straight lines, one a state."""
+    """Stage sums, error norm and dense output, the same operations in the same order for any number of states."""
     for name, terms in STAGES.items():
         arguments = ", ".join(stage for stage, _ in terms)
         yield f"def {name}(x, {arguments}, step, y):"
-        yield from (f"    y[{i}] = x[{i}] + step*({_sum(terms, i)})" for i in range(count))
+        yield from _each(count, lambda i, terms=terms: [f"y[{i}] = x[{i}] + step*({_sum(terms, i)})"])  # type: ignore[misc]
         yield "    return 0.0\n"
     yield "def error_norm(x, new, k1, k3, k4, k5, k6, k7, step, q):\n    worst = 0.0\n    total = 0.0"
-    for i in range(count):
-        yield f"    scale = greater(abs(new[{i}] - q[{1 + i}]), q[{1 + count + i}])"
-        yield f"    error = abs(step*({_sum(ERROR, i)}))/(q[0]*scale)"
-        yield "    total = total + error\n    if error > worst:\n        worst = error"
+    yield from _each(
+        count,
+        lambda i: [
+            f"scale = greater(abs(new[{i}] - q[1 + {i}]), q[{1 + count} + {i}])",
+            f"error = abs(step*({_sum(ERROR, i)}))/(q[0]*scale)",
+            "total = total + error",
+            "worst = greater(worst, error)",
+        ],
+    )
     yield "    return worst + 0.0*total\n"
     yield "def dense(share, step, x, f, y):"
     names = ("k1", "k2", "k3", "k4", "k5", "k6", "k7")
     yield from (f"    {name} = f[{place}]" for place, name in enumerate(names))
     yield "    new = f[8]\n    rest = 1.0 - share"
-    for i in range(count):
-        yield f"    gain = new[{i}] - x[{i}]\n    bend = step*k1[{i}] - gain"
-        yield f"    y[{i}] = x[{i}] + share*(gain + rest*(bend + share*((gain - step*k7[{i}] - bend)"
-        yield f"        + rest*step*({_sum(DENSE, i)}))))"
+    yield from _each(
+        count,
+        lambda i: [
+            f"gain = new[{i}] - x[{i}]",
+            f"bend = step*k1[{i}] - gain",
+            f"curve = (gain - step*k7[{i}] - bend) + rest*step*({_sum(DENSE, i)})",
+            f"y[{i}] = x[{i}] + share*(gain + rest*(bend + share*curve))",
+        ],
+    )
     yield "    return 0.0\n"
