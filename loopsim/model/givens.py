@@ -21,7 +21,7 @@ from loopsim.documents.types import (
 )
 from loopsim.errors import Problems, Where, nearest
 from loopsim.language.evaluate import Table
-from loopsim.language.tree import Expression, Name, Number
+from loopsim.language.tree import Expression, Name, Number, names_in
 from loopsim.language.units import PERCENT, Unit, to_si
 from loopsim.model.draft import Absent, Draft, namespace
 from loopsim.model.elements import Elements
@@ -97,7 +97,7 @@ class Givens(Translator):
             self._check_rising(flat, value)
         elif parameter.pair and isinstance(value, Formula) and isinstance(value.tree, Name) and given is not None:
             for end in ("low", "high"):
-                self.draft.assign(f"{flat}.{end}", self.tag, Name(f"{value.tree.name}.{end}"), value.where)
+                self._computed(f"{flat}.{end}", Name(f"{value.tree.name}.{end}"), value.where)
         else:
             self._number(flat, flat, value, parameter.where, given is not None, parameter.about)
 
@@ -132,9 +132,24 @@ class Givens(Translator):
             tree = value.tree if given and isinstance(value, Formula) else self.definition(value)
             if given:
                 self._refuse_absent(tree)
-            self.draft.assign(flat, self.tag, tree, getattr(value, "where", where))
+            self._computed(flat, tree, getattr(value, "where", where))
         except Absent as absent:
             self.leave_out(flat, absent)
+
+    def _computed(self, flat: str, tree: Expression, where: Where) -> None:
+        """A number computed from others, which must not lead back to it."""
+        pending, seen = list(names_in(tree)), set[str]()
+        while pending:
+            name = pending.pop()
+            if name == flat:
+                others = f", by way of {', '.join(sorted(seen))}" if seen else ""
+                self.draft.problems.add(f"'{flat}' is given by itself{others}", where, "write a number and its unit")
+                tree = Number(1.0)
+                break
+            if name in self.draft.assignments and name not in seen:
+                seen.add(name)
+                pending += names_in(self.draft.assignments[name].tree)
+        self.draft.assign(flat, self.tag, tree, where)
 
     def leave_out(self, flat: str, cause: Absent) -> None:
         """Note that a name has no value here, and whether that is a mistake already told."""

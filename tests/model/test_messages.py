@@ -53,6 +53,7 @@ CASES = [
     ("cut of nothing", GOOD, LOOP + "cut: [TT-1.pv -> element.duty]\n", "there is no wire 'TT-1.pv -> element.duty' to cut"),
     ("set of nothing", GOOD, LOOP + "set: {TIC-9.gain: 2}\n", "'TIC-9.gain' names no boundary value and no block"),
     ("positive feedback", GOOD, LOOP.replace("reverse", "direct"), "the loop of TIC-1 feeds back positively"),
+    ("given by itself", GOOD, LOOP.replace("sp: 55 degC", "sp: 55 degC, scan: scan"), "'TIC-1.scan' is given by itself"),
     ("below its bound", GOOD.replace("V: 1.8 m^3", "V: -1 m^3"), LOOP, "'tank.V' is -1 m^3; it must be above 0 m^3"),
 ]  # fmt: skip
 
