@@ -17,6 +17,8 @@ from loopsim.model.types import Assignment, Model
 
 FloatArray = NDArray[np.float64]
 Slopes = dict[int, float]
+BEYOND = "beyond#"  # before an unknown's name: how far the search has gone past the end where the unknown stands
+NEAR = 0.01  # of the way between an unknown's ends
 
 
 def relaxed(tree: Expression, given: Collection[str]) -> Expression:
@@ -53,12 +55,25 @@ def line_of(name: str, tree: Expression) -> Line:
     return Line(name, tree, tuple((one, slope) for one, slope in slopes if slope != Number(0.0)))
 
 
+@dataclass(frozen=True, slots=True)
+class Bracket:
+    """Between which values an unknown is looked for; `stops`: it stands at an end where nothing solves it."""
+
+    name: str
+    place: int
+    row: int
+    low: float
+    high: float
+    stops: bool
+
+
 @dataclass(slots=True)
 class System:
     """`rate(u) = 0` for the states and residuals of loops u of a law model.
 
-    `unknowns` are the names behind u: states first (`states` of them), then unknowns of loops.
-    `free_of_limits` takes the clips out.
+    `unknowns` are the names behind u: states first (`states` of them), then unknowns of loops. One that has ends never
+    leaves them: where u lies beyond, the model is looked at with the unknown at the end, and its row is what is left of
+    the equation there and a slope that leads back. `free_of_limits` takes the clips out.
     """
 
     model: Model
@@ -68,6 +83,7 @@ class System:
     _steps: list[Line] = field(default_factory=list)
     _rows: list[Line] = field(default_factory=list)
     _settled: dict[str, float | Table] = field(default_factory=dict)
+    _brackets: list[Bracket] = field(default_factory=list)
 
     def __post_init__(self) -> None:
         model = self.model
@@ -80,6 +96,7 @@ class System:
         wanted = set(model.assignments) | set(model.implicits) | {n for row in rows for n in names_in(row)}
         for step in ordered(model, wanted):
             if isinstance(step, Loop):
+                self._bracket(step, len(rows))
                 self.unknowns += step.unknowns
                 self._steps += [line_of(one.name, change(one.tree)) for one in step.inner]
                 rows += [change(one) for one in step.residuals]
@@ -88,23 +105,66 @@ class System:
         self._rows = [line_of("", row) for row in rows]
         self._settled = {name: slot.value for name, slot in model.slots.items()} | dict(model.tables)
 
+    def _bracket(self, loop: Loop, row: int) -> None:
+        """Note the ends of a loop's unknowns, where parameters alone tell them."""
+        for number, (low, high, stops) in enumerate(loop.limits):
+            if low is not None and high is not None:
+                ends = [_by_parameters(self.model, end) for end in (low, high)]
+                place = len(self.unknowns) + number
+                self._brackets.append(Bracket(loop.unknowns[number], place, row + number, ends[0], ends[1], stops))
+
+    def inside(self, u: FloatArray) -> FloatArray:
+        """u with every unknown between its ends."""
+        found = u.copy()
+        for one in self._brackets:
+            found[one.place] = min(max(u[one.place], one.low), one.high)
+        return found
+
+    def outside(self, values: Mapping[str, float]) -> str:
+        """An unknown that nothing solves between its ends, and that may not stand there; '' for none."""
+        return next((one.name for one in self._brackets if values.get(BEYOND + one.name) and not one.stops), "")
+
+    def _back(self, values: Mapping[str, float], bracket: Bracket) -> float:
+        """The slope that leads back: the equation's over the part next to the end, or over all where that turns."""
+        u = np.array([values[name] for name in self.unknowns])
+        end, width = values[bracket.name], bracket.high - bracket.low
+        inward = NEAR * width if end == bracket.low else -NEAR * width
+        sides = []
+        for place in (end, end + inward, bracket.low, bracket.high):
+            u[bracket.place] = place
+            sides.append(float(evaluate(self._rows[bracket.row].tree, self.values(u))))
+        near, mean = (sides[1] - sides[0]) / inward, (sides[3] - sides[2]) / width
+        return near if near * mean > 0 else mean
+
     def values(self, u: FloatArray, slots: Mapping[str, float] | None = None) -> dict[str, float]:
         """Every name's value at u (SI)."""
         values: dict[str, float | Table] = dict(self._settled)
         values.update(slots or {})
-        values.update(zip(self.unknowns, u.tolist(), strict=True))
+        within = self.inside(u)
+        values.update(zip(self.unknowns, within.tolist(), strict=True))
+        values.update((BEYOND + one.name, u[one.place] - within[one.place]) for one in self._brackets)
         for step in self._steps:
             values[step.name] = evaluate(step.tree, values)
         return values  # type: ignore[return-value]
 
     def residuals(self, values: Mapping[str, float]) -> FloatArray:
         """Rates of the states and residuals of the loops at these values."""
-        return np.array([evaluate(row.tree, values) for row in self._rows])
+        rows = np.array([evaluate(row.tree, values) for row in self._rows])
+        for one in self._brackets:
+            beyond = values.get(BEYOND + one.name)
+            if beyond:
+                rows[one.row] += self._back(values, one) * beyond
+        return rows
 
     def jacobian(self, values: Mapping[str, float], held: Collection[str] = ()) -> FloatArray:
         """d residuals / d u, shape (n, n); names in `held` are taken for constant."""
-        seeds = {name: {place: 1.0} for place, name in enumerate(self.unknowns)}
-        return self.rows_by(values, self.carried(values, seeds, held), len(self.unknowns))
+        at_an_end = [one for one in self._brackets if values[one.name] in (one.low, one.high)]
+        still = {one.place for one in at_an_end}
+        seeds = {name: {place: 1.0} for place, name in enumerate(self.unknowns) if place not in still}
+        matrix = self.rows_by(values, self.carried(values, seeds, held), len(self.unknowns))
+        for one in at_an_end:
+            matrix[one.row, one.place] = self._back(values, one)
+        return matrix
 
     def carried(
         self, values: Mapping[str, float], seeds: dict[str, Slopes], held: Collection[str] = ()
@@ -150,6 +210,15 @@ class System:
             if np.array_equal(before, u, equal_nan=True):
                 break
         return np.nan_to_num(u, nan=0.0, posinf=0.0, neginf=0.0)
+
+
+def _by_parameters(model: Model, tree: Expression) -> float:
+    """The value of a tree of slots and of what is computed from them."""
+    known = {
+        name: model.slots[name].value if name in model.slots else _by_parameters(model, model.assignments[name].tree)
+        for name in names_in(tree)
+    }
+    return float(evaluate(tree, known))
 
 
 @lru_cache(maxsize=32)

@@ -105,6 +105,9 @@ def settled(system: System, u: FloatArray, first: float = 1.0) -> FloatArray:
     creeping = _creeping(system, u)
     if creeping:
         raise _switching(system, creeping)
+    values = system.values(u)
+    if system.outside(values):
+        raise _no_rest(system, u, system.residuals(values))
     return u
 
 
@@ -160,7 +163,7 @@ def _implicit_step(system: System, u: FloatArray, inertia: FloatArray) -> FloatA
             trial = new + share * move
             trial_values = system.values(trial)
             trial_gap = inertia * (trial - u) - system.residuals(trial_values)
-            after = _size(trial_gap, trial, inertia)
+            after = _size(trial_gap, new, inertia)
             if after < before or before == 0.0 or np.all(np.abs(share * move) <= 1e-13 * (np.abs(new) + 1e-6)):
                 break
             share /= 2.0
@@ -187,11 +190,14 @@ def _size(gap: FloatArray, u: FloatArray, inertia: FloatArray) -> float:
 
 def _no_rest(system: System, u: FloatArray, residuals: FloatArray) -> ComputationError:
     worst = int(np.argmax(np.abs(residuals) / (np.abs(u) + 1e-3)))
-    name = system.unknowns[worst]
+    name = system.outside(system.values(u)) or system.unknowns[worst]
     state = system.model.states.get(name)
     if state is None:
-        what = f"no steady state was found: the equation of '{name}' is not met"
-        return ComputationError([Problem(what, "try other starts, or `starts: given`", None)])
+        implicit = system.model.implicits.get(name)
+        ends = " between its ends" if implicit is not None and implicit.low is not None else ""
+        what = f"no steady state was found: nothing{ends} solves the equation of '{name}'"
+        cure = "look at the equation and at `between:`, or ask for `starts: given`"
+        return ComputationError([Problem(what, cure, implicit.where if implicit else None)])
     per_hour = residuals[worst] * 3600.0 / state.unit.factor
     what = f"there is no steady state: '{name}' still moves by {per_hour:.4g} {state.unit.text} per hour"
     if state.mapped:
@@ -317,7 +323,7 @@ def _levels(system: System, place: int, value: float) -> list[float]:
 
 def _undetermined(system: System, u: FloatArray) -> NDArray[np.bool_]:
     """Which unknowns may move without leaving the rest: parts of directions in which no rate changes."""
-    matrix = system.jacobian(system.values(u)) * (np.abs(u) + 1e-9)
+    matrix = np.nan_to_num(system.jacobian(system.values(u))) * (np.abs(u) + 1e-9)
     largest = np.max(np.abs(matrix), axis=1, keepdims=True)
     _, sizes, directions = np.linalg.svd(matrix / np.where(largest > 0, largest, 1.0))
     idle = directions[sizes <= 1e-10 * max(float(sizes[0]), 1e-300)]
@@ -334,10 +340,11 @@ def _look(system: System, begin: FloatArray, found: list[FloatArray]) -> None:
         if (
             arrived
             and not _creeping(system, u)
+            and not system.outside(system.values(u))
             and _possible(system, u)
-            and not any(_same(system, u, other) for other in found)
+            and not any(_same(system, system.inside(u), other) for other in found)
         ):
-            found.append(u)
+            found.append(system.inside(u))
 
 
 def _same(system: System, u: FloatArray, other: FloatArray) -> bool:
