@@ -34,7 +34,7 @@ def test_a_pump_that_cannot_lift_stands_at_no_flow(write: Write, rise: str, flow
     assert 3600 * values["P-1.q"] == pytest.approx(flow, rel=1e-6, abs=1e-9)
 
 
-@pytest.mark.parametrize(("a", "root"), [("3", 3**0.5), ("1e-6", 1e-3), ("4", 2.0)])
+@pytest.mark.parametrize(("a", "root"), [("3", 3**0.5), ("1e-6", 1e-3), ("0", 0.0), ("4", 2.0)])
 def test_a_root_between_the_ends_and_on_them(write: Write, a: str, root: float) -> None:
     plant = f"plant: one\nblocks: {{n: {{use: square, a: {a}}}}}\n"
     values = source(write({"blocks/square.yaml": SQUARE, "plant.yaml": plant})).rested().values
@@ -45,5 +45,5 @@ def test_a_root_between_the_ends_and_on_them(write: Write, a: str, root: float) 
 def test_no_root_between_the_ends_is_told(write: Write, a: str) -> None:
     """3 solves the equation with 9, but lies beyond the end."""
     plant = f"plant: one\nblocks: {{n: {{use: square, a: {a}}}}}\n"
-    with pytest.raises(ComputationError, match="nothing between its ends solves the equation of 'n.y'"):
+    with pytest.raises(ComputationError, match=r"nothing between its ends solves the equation of 'n\.y'"):
         source(write({"blocks/square.yaml": SQUARE, "plant.yaml": plant})).rested()
