@@ -69,7 +69,7 @@ def _elaborate(draft: Draft) -> None:
     for part in parts:
         part.read_inputs()
         part.choose_mode()
-    for step in ("note_states", "note_law", "note_outputs", "check_parameters", "note_scan"):
+    for step in ("note_states", "note_law", "note_outputs", "check_parameters", "note_scan", "note_task"):
         for part in parts:
             with draft.problems.collecting():
                 _tolerant(part, step)

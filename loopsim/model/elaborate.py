@@ -214,7 +214,7 @@ class Elaboration(Givens):
 
     # ------------------------------------------------------------ scan task
     def note_scan(self) -> None:
-        """The task that executes this block's scan text."""
+        """The statements of this block's scan text."""
         if self.mode not in ("scanned", "continuous"):
             return
         for element in self.scanned:
@@ -222,6 +222,11 @@ class Elaboration(Givens):
                 self.scan_name(element, True)
             except Absent as absent:
                 self.leave_out(self.flat(element), absent)
+
+    def note_task(self) -> None:
+        """The task that executes them, once all that any block reads of it is known."""
+        if self.mode not in ("scanned", "continuous"):
+            return
         writes: list[tuple[str, Expression]] = [
             (self._store(element), Name(self.flat(element) + PRIME))
             for element in self.scanned
