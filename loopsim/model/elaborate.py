@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-import operator
+from dataclasses import replace
 
 from loopsim.documents.types import Balance, Bounds, Formula, Given, Held, Output, Parameter, Quantity, Word
 from loopsim.language.derivative import simplify
@@ -12,9 +12,7 @@ from loopsim.model.balances import equations, solve_rates
 from loopsim.model.draft import INNER, Absent
 from loopsim.model.givens import Givens
 from loopsim.model.scales import si_value
-from loopsim.model.types import PRIME, Bound, Controller, ScanTask, Signal, State
-
-RELATIONS = {"above": operator.gt, "at_least": operator.ge, "below": operator.lt, "at_most": operator.le}
+from loopsim.model.types import PRIME, RELATIONS, Bound, Controller, ScanTask, Signal, State
 
 
 class Elaboration(Givens):
@@ -173,7 +171,10 @@ class Elaboration(Givens):
             if value is None or bound is None:
                 continue
             limit = self._limit(bound)
-            if limit is None or kept(value, limit):
+            if limit is None:
+                continue
+            self._note_bound(flat, relation, limit)
+            if kept(value, limit):
                 continue
             given = self.values.get(element, self.values.get(parameter.key.name))
             unit, air = self.draft.unit(self.flat(element), parameter.where), self.draft.layout.air_pressure
@@ -183,6 +184,12 @@ class Elaboration(Givens):
                 given.where if given else self.where,
                 parameter.about,
             )
+
+    def _note_bound(self, flat: str, relation: str, limit: float) -> None:
+        """Events have to keep the bound too."""
+        slot = self.draft.slots.get(flat)
+        if slot is not None:
+            self.draft.slots[flat] = replace(slot, bounds=(*slot.bounds, (relation, limit)))
 
     def _limit(self, bound: Quantity | Formula) -> float | None:
         try:

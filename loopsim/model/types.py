@@ -6,6 +6,7 @@ a name of its own and stands in one of the lists below.
 
 from __future__ import annotations
 
+import operator
 from dataclasses import dataclass, field
 
 from loopsim.errors import Where
@@ -13,12 +14,16 @@ from loopsim.language.evaluate import Table
 from loopsim.language.tree import Expression
 from loopsim.language.units import Unit
 
+RELATIONS = {"above": operator.gt, "at_least": operator.ge, "below": operator.lt, "at_most": operator.le}
 PRIME = "'"  # `TIC.output'` is the value that the execution now going on gives
 
 
 @dataclass(frozen=True, slots=True)
 class Slot:
-    """A number that the plant gives: parameter, boundary value, unwired input, setting (as a code) or fault (0, 1)."""
+    """A number that the plant gives: parameter, boundary value, unwired input, setting (as a code) or fault (0, 1).
+
+    `bounds`: (relation, limit [SI]) that its value must keep.
+    """
 
     name: str
     kind: str
@@ -27,6 +32,7 @@ class Slot:
     where: Where
     choices: tuple[str, ...] = ()
     about: str = ""
+    bounds: tuple[tuple[str, float], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

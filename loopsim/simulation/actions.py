@@ -8,9 +8,9 @@ from dataclasses import dataclass, field
 
 from loopsim.documents.types import Event, Given, Quantity, Value, Word
 from loopsim.errors import Problems, fail, nearest
-from loopsim.language.units import PERCENT, Unit, difference_of, to_si
+from loopsim.language.units import PERCENT, Unit, difference_of, from_si, to_si
 from loopsim.model.scales import si_value
-from loopsim.model.types import Model
+from loopsim.model.types import RELATIONS, Model
 from loopsim.simulation.follow import read_series
 
 
@@ -139,6 +139,16 @@ class Actions:
             return base * by.value * PERCENT.factor
         return self._si(by, difference_of(unit), f"the change of '{name}'")
 
+    def check(self, number: int, name: str, value: float) -> None:
+        """Refuse an event that brings a number [SI] beyond its bounds."""
+        slot = self.model.slots[name]
+        for relation, limit in slot.bounds:
+            if not RELATIONS[relation](value, limit):
+                shown, wanted = (f"{from_si(one, slot.unit, self.model.air_pressure):.5g}" for one in (value, limit))
+                what = f"this event brings '{name}' to {shown} {slot.unit.text}"
+                cure = f"it must be {relation.replace('_', ' ')} {wanted} {slot.unit.text}"
+                raise fail(what, self.events[number].where, cure)
+
     def _step(self, event: Event, number: int, name: str, time: float) -> list[Action]:
         if name not in self.model.slots:
             if event.to is None:
@@ -146,6 +156,7 @@ class Actions:
             return [Action(time, number, "", None, ((name, self._value(event.to, name, f"'{name}'")),))]
         if event.to is not None:
             value = self._value(event.to, name, f"'{name}'")
+            self.check(number, name, value)
             return [Action(time, number, name, lambda track, now: _set_base(track, value, now))]
         if event.times is not None:
             factor = event.times.value * (event.times.unit.factor if event.times.unit else 1.0)
@@ -167,6 +178,7 @@ class Actions:
             else:
                 assert event.by is not None
                 end = start + self.change_by(event.by, name, start)
+            self.check(number, name, end * track.factor + sum(track.laid.values()))
             track.base, track.slope, track.since = start, (end - start) / over, now
 
         return [Action(time, number, name, begin), Action(time + over, number, name, Track.hold)]
@@ -278,10 +290,15 @@ def seconds(time: Quantity | None) -> float:
     return to_si(time.value, time.unit) if time.unit is not None else time.value
 
 
-def not_applicable(event: Event, model: Model) -> bool:
-    """Whether a strategy lacks what the event addresses."""
-    tag = event.target if event.kind in ("mode", "fault") else event.target.rpartition(".")[0]
-    if not tag:
-        return False
+def lacking(event: Event, model: Model) -> str:
+    """The tag of a block that an event changes or waits for and that this model does not have; '' for none."""
+    wanted = [event.target if event.kind in ("mode", "fault") else event.target.rpartition(".")[0]]
+    if event.when is not None:
+        wanted.append(event.when.signal.rpartition(".")[0])
     tags = {name.rpartition(".")[0] for name in (*model.slots, *model.signals, *model.states, *model.memory)}
-    return tag not in tags
+    return next((tag for tag in wanted if tag and tag not in tags), "")
+
+
+def not_applicable(event: Event, model: Model) -> bool:
+    """Whether a strategy lacks what the event changes or waits for."""
+    return bool(lacking(event, model))

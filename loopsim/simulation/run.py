@@ -201,6 +201,8 @@ def _carry_out(simulation: Simulation, action: Action, now: float) -> None:
         track = simulation.tracks.setdefault(action.target, Track(slot.value))
         action.change(track, now)
         numbers = track.numbers()
+        for swing in (numbers[3], -numbers[3]):
+            simulation.actions.check(action.order, action.target, numbers[0] + swing)
         if action.target in program.motion:
             place = program.motion[action.target]
             state.p[place : place + 6] = list(numbers)

@@ -10,7 +10,7 @@ from loopsim.language.dimensions import Dimension
 from loopsim.language.units import ATMOSPHERE, Unit, difference_of, parse_unit
 from loopsim.model.scales import si_value
 from loopsim.model.types import Model
-from loopsim.simulation.actions import Actions, check_target, not_applicable
+from loopsim.simulation.actions import Actions, check_target, lacking, not_applicable
 from loopsim.simulation.conditions import conditions_of
 from loopsim.study.rules import per_step
 
@@ -52,7 +52,7 @@ def _check_event(
     """An event must do something in one strategy at least, and be possible wherever what it addresses is there."""
     having = [model for model in models.values() if not not_applicable(event, model)]
     if not having:
-        tag = event.target if event.kind in ("mode", "fault") else event.target.rpartition(".")[0]
+        tag = lacking(event, next(iter(models.values())))
         tags = {one.tag for model in models.values() for one in model.signals.values() if one.tag}
         problems.add(f"no strategy has a block '{tag}'", event.where, nearest(tag, tags, "tags"))
     for model in having:
