@@ -13,7 +13,6 @@ from loopsim.results import Cell, Table
 
 COLOURS = {"good": "36", "bad": "35;1", "open": "33"}
 WIDE_GAP, NARROW_GAP, NARROW = 3, 2, 100
-SMALLEST = 8  # characters that a column keeps however narrow the page is
 UNIT = r"(?<=\d) (?=\S)"  # the space between a number and what it counts
 JOIN = "\u00a0"  # stands between a number and its unit, which stay together
 
@@ -53,27 +52,39 @@ def _grid(table: Table, width: int, colour: bool) -> list[str]:
     heads, rows = [heads[place] for place in kept], [[row[place] for place in kept] for row in rows]
     gap = WIDE_GAP if width >= NARROW else NARROW_GAP
     widths = _widths([[row[place].text for row in (heads, *rows)] for place in range(len(kept))], width, gap)
+    if sum(widths) + gap * (len(widths) - 1) > width:
+        return [line for row in rows for line in _upright(heads, row, width, colour)]
     shown = [_row(row, widths, gap, colour) for row in rows]
     if not any(head.text for head in heads):
         return shown
     return [_row(heads, widths, gap, False), "-" * (sum(widths) + gap * (len(widths) - 1)), *shown]
 
 
+def _upright(heads: Sequence[Cell], row: Sequence[Cell], width: int, colour: bool) -> list[str]:
+    """A row on a page too narrow for its columns: one cell below the other, each with its head before it."""
+    lines = _wrap(row[0].text, width) or [""]
+    for head, cell in zip(heads[1:], row[1:], strict=True):
+        if cell.text:
+            code = COLOURS.get(cell.tone)
+            told = _wrap(f"{head.text}: {cell.text}" if head.text else cell.text, width, later="    ", first="  ")
+            lines += [f"\x1b[{code}m{line}\x1b[0m" if colour and code else line for line in told]
+    return lines
+
+
 def _widths(columns: Sequence[Sequence[str]], width: int, gap: int) -> list[int]:
-    """Column widths that fit: the widest gives way first, down to its longest word, and below that only if it must."""
+    """Column widths that fit if they can: the widest gives way first, down to its longest word."""
     widths = [max(len(text) for text in column) for column in columns]
     words = [
         max((len(word) for text in column for word in re.sub(UNIT, JOIN, text).split(" ")), default=1)
         for column in columns
     ]
     excess = sum(widths) + gap * (len(widths) - 1) - width
-    for floors in (words, [min(word, SMALLEST) for word in words]):
-        while excess > 0:
-            loose = [place for place in range(len(widths)) if widths[place] > floors[place]]
-            if not loose:
-                break
-            widths[max(loose, key=lambda place: widths[place])] -= 1
-            excess -= 1
+    while excess > 0:
+        loose = [place for place in range(len(widths)) if widths[place] > words[place]]
+        if not loose:
+            break
+        widths[max(loose, key=lambda place: widths[place])] -= 1
+        excess -= 1
     return widths
 
 

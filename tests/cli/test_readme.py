@@ -77,3 +77,17 @@ def test_the_library_has_the_blocks_that_it_names(capsys: pytest.CaptureFixture[
     listed = capsys.readouterr().out
     used = {use for _, text in FILES for use in re.findall(r"use: (\w+)", text)}
     assert used and all(re.search(rf"\b{use}\b", listed) for use in used)
+
+
+def test_the_printed_table_is_what_the_first_command_prints(
+    monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """All of it but what `...` stands for."""
+    (printed,) = re.findall(r"```\n(flow_rise\n=+\n.*?)\n```", README, re.DOTALL)
+    parts = [part.strip("\n") for part in printed.split("\n...\n")]
+    assert len(parts) == 2
+    monkeypatch.chdir(ROOT)
+    assert status_of(["run", "scenarios/wash_water_heater"]) == 0
+    found = capsys.readouterr().out
+    for part in parts:
+        assert part in found

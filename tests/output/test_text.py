@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-from collections import Counter
 
 import pytest
 
@@ -22,7 +21,7 @@ def verdicts() -> Table:
     return Table("header_sag", heads, rows, ("feedback: " + RULES[0] + "; tank.T is 1.66 K below it at 17.65 min",) * 2)
 
 
-@pytest.mark.parametrize("width", [80, 100, 110, 160])
+@pytest.mark.parametrize("width", [40, 60, 80, 100, 110, 160])
 def test_no_line_is_wider_than_the_page_and_no_word_is_cut(width: int) -> None:
     text = render([verdicts()], width, False)
     assert max(map(len, text.splitlines())) <= width
@@ -43,10 +42,12 @@ def test_a_number_stays_with_its_unit(width: int) -> None:
 
 
 def test_a_very_narrow_page_still_says_everything() -> None:
-    narrow, wide = (Counter(render([verdicts()], width, False)) for width in (30, 300))
-    for letter in " \n-=":  # lines between, and hyphens with them
-        del narrow[letter], wide[letter]
-    assert narrow == wide
+    """Cell for cell, each with its head."""
+    narrow = " ".join(render([verdicts()], 30, False).split())
+    for rule in RULES:
+        at = narrow.index(rule)
+        for strategy in STRATEGIES:
+            at = narrow.index(f"{strategy}: 0.07331 K at 11.29 min, passed", at)
 
 
 def test_colours_only_where_they_are_wanted(monkeypatch: pytest.MonkeyPatch) -> None:
