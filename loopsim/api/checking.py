@@ -7,7 +7,7 @@ from pathlib import Path
 
 from loopsim.api.listing import key_text, text
 from loopsim.api.running import time_models
-from loopsim.documents.load import library_around, read_document
+from loopsim.documents.load import catalogue_around, read_document
 from loopsim.documents.types import Block, Diagram, Scenario, Use
 from loopsim.errors import ComputationError, InputError, Problems, fail
 from loopsim.model.choice import Source, scenario_sources, source_of
@@ -67,7 +67,7 @@ def _block(path: Path, block: Block, problems: Problems) -> list[str]:
     for check in block.checks:
         with problems.collecting():
             try:
-                value, agrees = run_check(block, check, library_around(path))
+                value, agrees = run_check(block, check, catalogue_around(path))
             except ComputationError as error:
                 problems.add(f"the check cannot be carried out: {error.problems[0].what}", check.where)
                 continue
@@ -122,7 +122,7 @@ def _stood(source: Source, use: Use, port: str) -> str:
     """What stood at an input before a wire: its value or its default; '' for neither."""
     if port in use.values:
         return f"the value {text(use.values[port].value)}"
-    inputs = {key_text(one.key): one for one in source.library.block(use.block).inputs}
+    inputs = {key_text(one.key): one for one in source.catalogue.block(use.block).inputs}
     default = inputs[port].default if port in inputs else None
     return f"the default {text(default)}" if default is not None else ""
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 from typing import Any
 
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 from loopsim.documents.types import (
     Balance,
     Block,
@@ -56,10 +56,10 @@ def block_table() -> Table:
 
 def blocks_json() -> list[dict[str, str]]:
     """The same as data, by family and name."""
-    library = Library(Path())
+    catalogue = Catalogue(Path())
     found = [
-        {"family": library.path(name).parent.name, "block": name, "about": library.block(name).about}
-        for name in library.names()
+        {"family": catalogue.path(name).parent.name, "block": name, "about": catalogue.block(name).about}
+        for name in catalogue.names()
     ]
     return sorted(found, key=lambda one: (one["family"], one["block"]))
 
@@ -118,11 +118,11 @@ def _given(values: dict[str, str]) -> str:
 # ---------------------------------------------------------------- as data
 def block_json(name: str) -> dict[str, Any]:
     """A block as data, what `like:` brings carried out; quantities and formulas as text."""
-    library = Library(Path())
-    block = library.block(name)
+    catalogue = Catalogue(Path())
+    block = catalogue.block(name)
     return {
         "block": block.name,
-        "family": library.path(name).parent.name,
+        "family": catalogue.path(name).parent.name,
         "about": block.about,
         "balances": {key_text(one.key): one.text for one in block.balances},
         "let": _formulas(block.let),
@@ -136,7 +136,7 @@ def block_json(name: str) -> dict[str, Any]:
         },
         "parameters": _entries(block.parameters),
         "one_of": [list(names) for names in block.one_of],
-        **_ports(block, library),
+        **_ports(block, catalogue),
         "states": _entries(block.states),
         "memory": _entries(block.memory),
         "faults": {one.name: one.about for one in block.faults.values()},
@@ -151,14 +151,14 @@ def block_json(name: str) -> dict[str, Any]:
     }
 
 
-def _ports(block: Block, library: Library) -> dict[str, Any]:
+def _ports(block: Block, catalogue: Catalogue) -> dict[str, Any]:
     """Inputs and outputs; those of a block of blocks are ports inside."""
     if not block.ports:
         return {"inputs": _entries(block.inputs), "outputs": _entries(block.outputs)}
     found: dict[str, dict[str, Any]] = {"inputs": {}, "outputs": {}}
     for port, inside in block.ports.items():
         tag, _, name = inside.partition(".")
-        entries = _ports(library.block(block.blocks[tag].block), library)
+        entries = _ports(catalogue.block(block.blocks[tag].block), catalogue)
         for where, known in found.items():
             if name in entries[where]:
                 known[port] = {**entries[where][name], "port": inside}

@@ -10,7 +10,7 @@ from pathlib import Path
 from typing import Any
 
 from loopsim import __version__
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 from loopsim.documents.types import Scenario
 from loopsim.errors import ComputationError, InputError, Problems, fail, nearest
 from loopsim.model.choice import Source, scenario_sources
@@ -206,15 +206,15 @@ def computing(source: Source) -> frozenset[str]:
         for diagram in source.diagrams
         if diagram.kind == "strategy"
         for use in diagram.blocks.values()
-        for tag in _computing(source.library, use.tag, use.block)
+        for tag in _computing(source.catalogue, use.tag, use.block)
     )
 
 
-def _computing(library: Library, tag: str, name: str) -> list[str]:
-    inside = library.block(name).blocks
+def _computing(catalogue: Catalogue, tag: str, name: str) -> list[str]:
+    inside = catalogue.block(name).blocks
     if inside:
-        return [found for use in inside.values() for found in _computing(library, f"{tag}.{use.tag}", use.block)]
-    return [tag] if library.path(name).parent.name in ("control", "logic") else []
+        return [found for use in inside.values() for found in _computing(catalogue, f"{tag}.{use.tag}", use.block)]
+    return [tag] if catalogue.path(name).parent.name in ("control", "logic") else []
 
 
 def time_models(scenario: Scenario, sources: Mapping[str, Source], point: str = "") -> dict[str, Model]:

@@ -7,18 +7,18 @@ from __future__ import annotations
 
 from pathlib import Path
 
+from loopsim.documents.catalogue import Catalogue
 from loopsim.documents.diagram import diagram_from
 from loopsim.documents.document import read_tree
-from loopsim.documents.library import Library
 from loopsim.documents.scenario import scenario_from
 from loopsim.documents.shapes import KINDS
 from loopsim.documents.types import Block, Diagram, Document, Scenario
 from loopsim.errors import Problems, Where
 
 
-def read_block(path: Path, library: Library | None = None) -> Block:
-    """A block file, `like` carried out, checked. `library`: where `like` looks; by default around the file."""
-    return (library or library_around(path)).read(path)
+def read_block(path: Path, catalogue: Catalogue | None = None) -> Block:
+    """A block file, `like` carried out, checked. `catalogue`: where `like` looks; by default around the file."""
+    return (catalogue or catalogue_around(path)).read(path)
 
 
 def read_diagram(path: Path, asked_at: Where | None = None) -> Diagram:
@@ -46,7 +46,7 @@ def read_document(path: Path) -> Document:
     return read_scenario(path) if kind == "scenario" else read_diagram(path)
 
 
-def library_around(path: Path) -> Library:
+def catalogue_around(path: Path) -> Catalogue:
     """The library as the plant sees it that a block file belongs to: from the folder that holds its `blocks/`."""
     near = (*path.parents[:3], *path.resolve().parents[:3])
-    return Library(next((folder.parent for folder in near if folder.name == "blocks"), path.parent))
+    return Catalogue(next((folder.parent for folder in near if folder.name == "blocks"), path.parent))

@@ -286,7 +286,7 @@ class Liquid:
 
 @dataclass(frozen=True, slots=True)
 class Diagram:
-    """A plant, or a strategy laid over one (`kind`). `blocks` hold files found beside it: see `documents.library`."""
+    """A plant, or a strategy laid over one (`kind`). `blocks` hold files found beside it: see `documents.catalogue`."""
 
     kind: str
     name: str

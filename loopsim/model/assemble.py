@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 from loopsim.documents.types import Diagram, Formula, Given, Input, Word
 from loopsim.errors import Problems, nearest
 from loopsim.language.tree import Call, Expression, Name, Number, Operation
@@ -22,7 +22,7 @@ from loopsim.model.wiring import Port, Wiring, join
 
 def assemble(
     diagrams: Iterable[Diagram],
-    library: Library,
+    catalogue: Catalogue,
     *,
     law: bool = False,
     free: frozenset[str] = frozenset(),
@@ -36,7 +36,7 @@ def assemble(
     Raises `InputError` with all that is wrong.
     """
     problems = Problems()
-    layout = lay_out(diagrams, library, problems, values, point)
+    layout = lay_out(diagrams, catalogue, problems, values, point)
     problems.raise_if_any()
     elements = {tag: elements_of(instance, problems) for tag, instance in layout.instances.items()}
     wiring = join(layout, elements, problems)

@@ -8,7 +8,7 @@ from functools import lru_cache, partial
 from pathlib import Path
 from typing import Any
 
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 from loopsim.documents.load import read_diagram, read_scenario
 from loopsim.documents.types import Diagram, Given, Scenario
 from loopsim.errors import InputError, Problems, Where, fail, nearest
@@ -27,13 +27,13 @@ class Source:
 
     name: str
     diagrams: tuple[Diagram, ...]
-    library: Library
+    catalogue: Catalogue
     values: Mapping[str, Given] = field(default_factory=dict)
     _kept: dict[tuple[object, ...], Any] = field(default_factory=dict)
 
     def law(self, point: str = "") -> Model:
         """The continuous law of all of it, at an operating point of the plant ('' for its own values)."""
-        make = partial(assemble, self.diagrams, self.library, law=True, values=self.values, point=point)
+        make = partial(assemble, self.diagrams, self.catalogue, law=True, values=self.values, point=point)
         law: Model = self._once(("law", point), make)
         return law
 
@@ -44,7 +44,7 @@ class Source:
 
     def timed(self, free: frozenset[str] = frozenset(), point: str = "") -> Model:
         """What is simulated; `free` names what events may change."""
-        make = partial(assemble, self.diagrams, self.library, free=free, values=self.values, point=point)
+        make = partial(assemble, self.diagrams, self.catalogue, free=free, values=self.values, point=point)
         timed: Model = self._once(("timed", free, point), make)
         return timed
 
@@ -93,7 +93,7 @@ def _source(
         with problems.collecting():
             diagrams.append(read_diagram(path, asked_at))
     problems.raise_if_any()
-    return Source(name, tuple(diagrams), Library(plant.parent))
+    return Source(name, tuple(diagrams), Catalogue(plant.parent))
 
 
 def scenario_sources(path: Path, only: str = "") -> tuple[Scenario, dict[str, Source]]:

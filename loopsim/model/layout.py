@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field, replace
 
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 from loopsim.documents.types import Block, Diagram, Formula, Given, Liquid, PairValue, Quantity, Use, Value, Wire, Word
 from loopsim.errors import Problems, Where, nearest
 from loopsim.language.derivative import substitute
@@ -48,7 +48,7 @@ class Layout:
 
 def lay_out(
     diagrams: Iterable[Diagram],
-    library: Library,
+    catalogue: Catalogue,
     problems: Problems,
     values: Mapping[str, Given] | None = None,
     point: str = "",
@@ -63,7 +63,7 @@ def lay_out(
     for diagram in ordered:
         _join_values(layout, diagram, problems)
         for use in diagram.blocks.values():
-            _place(layout, use.tag, use, library, problems)
+            _place(layout, use.tag, use, catalogue, problems)
         layout.wires += diagram.wires
     for diagram in ordered:
         for cut in diagram.cut:
@@ -97,21 +97,21 @@ def _join_values(layout: Layout, diagram: Diagram, problems: Problems) -> None:
         layout.air_pressure = pressure.value * diagram.air_pressure.unit.factor
 
 
-def _place(layout: Layout, tag: str, use: Use, library: Library, problems: Problems) -> None:
+def _place(layout: Layout, tag: str, use: Use, catalogue: Catalogue, problems: Problems) -> None:
     if tag in layout.instances or tag in layout.boundary:
         problems.add(f"the tag '{tag}' is used twice", use.where, "give every block a tag of its own")
         return
     with problems.collecting():
-        block = library.block(use.block, use.where)
+        block = catalogue.block(use.block, use.where)
         layout.instances[tag] = Instance(tag, block, dict(use.values), use.where)
-        _open(layout, tag, block, library, problems)
+        _open(layout, tag, block, catalogue, problems)
 
 
-def _open(layout: Layout, tag: str, block: Block, library: Library, problems: Problems) -> None:
+def _open(layout: Layout, tag: str, block: Block, catalogue: Catalogue, problems: Problems) -> None:
     own = {one.key.name for one in block.parameters} | set(block.settings)
     for inner in block.blocks.values():
         values = {key: _passed(given, tag, own) for key, given in inner.values.items()}
-        _place(layout, f"{tag}.{inner.tag}", replace(inner, values=values), library, problems)
+        _place(layout, f"{tag}.{inner.tag}", replace(inner, values=values), catalogue, problems)
     for wire in block.wires:
         layout.wires.append(replace(wire, source=f"{tag}.{wire.source}", target=f"{tag}.{wire.target}"))
     for port, inside in block.ports.items():

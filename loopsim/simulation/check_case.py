@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 from loopsim.documents.types import Block, Check, Diagram, Scenario, Use
 from loopsim.documents.values import seconds
 from loopsim.errors import ComputationError, Problem, Problems, fail, nearest
@@ -19,7 +19,7 @@ from loopsim.simulation.conditions import resolve
 from loopsim.simulation.run import prepare, run
 
 
-def run_check(block: Block, check: Check, library: Library) -> tuple[float, bool]:
+def run_check(block: Block, check: Check, catalogue: Catalogue) -> tuple[float, bool]:
     """The value that a check asks for, in the unit of its `is:`, and whether it agrees within `within:`.
 
     `at`: a signal at rest. `gain`: its slope by another at rest. `time_constant`: sum of lags less sum of leads of the
@@ -29,14 +29,14 @@ def run_check(block: Block, check: Check, library: Library) -> tuple[float, bool
     """
     diagram = case_of(block, check)
     if check.after is not None:
-        found = _after(block, check, diagram, library)
+        found = _after(block, check, diagram, catalogue)
     elif check.at:
-        law = assemble([diagram], library, law=True)
+        law = assemble([diagram], catalogue, law=True)
         flat = _name(block, check, check.at, law)
         _refuse_other_kind(check, _scale(law, flat).dimension, _scale(law, flat).point)
         found = rest(law).values[flat]
     else:
-        found = _slope(block, check, assemble([diagram], library, law=True))
+        found = _slope(block, check, assemble([diagram], catalogue, law=True))
     unit = _unit(check)
     value = from_si(found, unit if check.at or check.after else difference_of(unit))
     return value, abs(value - check.expected.value) <= _allowed(check)
@@ -146,11 +146,11 @@ def _linear(
 
 
 # ---------------------------------------------------------------- runs
-def _after(block: Block, check: Check, diagram: Diagram, library: Library) -> float:
+def _after(block: Block, check: Check, diagram: Diagram, catalogue: Catalogue) -> float:
     """A signal [SI] at a time of a run from the starts of the block, all inputs as given."""
     assert check.after is not None
     time, name = check.after
-    law, timed = assemble([diagram], library, law=True), assemble([diagram], library)
+    law, timed = assemble([diagram], catalogue, law=True), assemble([diagram], catalogue)
     flat = _name(block, check, name, timed)
     _refuse_other_kind(check, _scale(timed, flat).dimension, _scale(timed, flat).point)
     lasts = seconds(time)

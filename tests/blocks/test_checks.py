@@ -7,13 +7,13 @@ from pathlib import Path
 
 import pytest
 
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 from loopsim.documents.types import Block, Check
 from loopsim.errors import ComputationError, InputError
 from loopsim.model.assemble import assemble
 from loopsim.simulation.check_case import case_of, run_check
 
-LIBRARY = Library(Path(__file__).parent / "beside nothing")
+LIBRARY = Catalogue(Path(__file__).parent / "beside nothing")
 NAMES = LIBRARY.names()
 CASES = [(name, number) for name in NAMES for number in range(len(LIBRARY.block(name).checks))]
 
@@ -73,8 +73,8 @@ def wrong(name: str, number: int, tmp_path: Path, old: str, new: str) -> tuple[f
     assert old in text
     (tmp_path / "blocks").mkdir()
     (tmp_path / "blocks" / path.name).write_text(text.replace(old, new), encoding="utf-8")
-    library = Library(tmp_path)
-    return run_check(library.block(name), library.block(name).checks[number], library)
+    catalogue = Catalogue(tmp_path)
+    return run_check(catalogue.block(name), catalogue.block(name).checks[number], catalogue)
 
 
 def first_of(name: str, kind: str) -> int:
@@ -125,7 +125,7 @@ def test_a_gain_that_does_not_settle_is_told(tmp_path: Path) -> None:
         "check:\n  - {given: {u: 0 m^3/h}, gain: [u, V], is: 1 h, within: 1 %, source: none}\n",
         encoding="utf-8",
     )
-    library = Library(tmp_path)
-    block = library.block("integrator")
+    catalogue = Catalogue(tmp_path)
+    block = catalogue.block("integrator")
     with pytest.raises(ComputationError, match="does not come to rest"):
-        run_check(block, block.checks[0], library)
+        run_check(block, block.checks[0], catalogue)

@@ -6,9 +6,9 @@ from pathlib import Path
 
 import pytest
 
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 
-LIBRARY = Library(Path(__file__).parent / "beside nothing")
+LIBRARY = Catalogue(Path(__file__).parent / "beside nothing")
 TRANSMITTER = "range lag damping dead_time noise noise_every resolution bias drift failure"
 # block: inputs -> outputs | parameters and settings | streams, memories, faults
 FIXED = {

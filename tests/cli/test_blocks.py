@@ -9,10 +9,10 @@ import pytest
 
 from loopsim.api import block_json
 from loopsim.cli.main import status_of
-from loopsim.documents.library import Library
+from loopsim.documents.catalogue import Catalogue
 from tests.conftest import Write
 
-NAMES = Library(Path(__file__).parent).names()
+NAMES = Catalogue(Path(__file__).parent).names()
 
 
 def shown(capsys: pytest.CaptureFixture[str], *words: str) -> tuple[int, str]:

@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 
 from loopsim.documents.block_kinds import Kinds
-from loopsim.documents.library import Library, shipped
+from loopsim.documents.catalogue import Catalogue, shipped
 from loopsim.documents.namespace import Names
 from loopsim.documents.types import Let
 from loopsim.errors import InputError, Problems
@@ -91,7 +91,7 @@ def read(folder: Path, text: str) -> None:
     path = folder / "blocks" / "trial.yaml"
     path.parent.mkdir(exist_ok=True)
     path.write_text(text)
-    Library(folder).read(path)
+    Catalogue(folder).read(path)
 
 
 def test_a_good_block_passes(tmp_path: Path) -> None:
@@ -288,7 +288,7 @@ def test_many_settings_in_units_are_refused_at_once(tmp_path: Path) -> None:
 
 @pytest.mark.parametrize("path", sorted(shipped("blocks").rglob("*.yaml")), ids=lambda path: path.stem)
 def test_every_shipped_block_makes_sense(path: Path) -> None:
-    Library(path.parent).read(path)
+    Catalogue(path.parent).read(path)
 
 
 @pytest.mark.parametrize("path", sorted(shipped("blocks").rglob("*.yaml")), ids=lambda path: path.stem)
@@ -303,13 +303,13 @@ def test_a_factor_with_a_unit_in_any_balance_is_caught(tmp_path: Path, path: Pat
         target.parent.mkdir(exist_ok=True)
         target.write_text("\n".join(changed) + "\n")
         with pytest.raises(InputError):
-            Library(tmp_path).read(target)
+            Catalogue(tmp_path).read(target)
 
 
 @pytest.mark.parametrize("path", sorted(shipped("blocks").rglob("*.yaml")), ids=lambda path: path.stem)
 def test_every_formula_of_a_shipped_block_is_looked_at(path: Path) -> None:
     """Nothing stays unchecked in silence: every formula has a kind under every choice of the settings in units."""
-    block = Library(path.parent).read(path)
+    block = Catalogue(path.parent).read(path)
     names = Names(block)
     for choices in ({"order": "1"}, {"order": "2"}):
         kinds = Kinds(names, choices, Problems())

@@ -8,7 +8,7 @@ from pathlib import Path
 import pytest
 
 from loopsim.documents.block import block_from
-from loopsim.documents.library import Library, shipped
+from loopsim.documents.catalogue import Catalogue, shipped
 from loopsim.documents.load import read_block, read_document
 from loopsim.documents.nodes import Mapping, compose
 from loopsim.documents.source import source_from
@@ -35,8 +35,8 @@ NAMES = sorted(path.stem for path in (SKETCHES / "blocks").glob("*.yaml"))
 
 
 @pytest.fixture(scope="module")
-def library() -> Library:
-    return Library(SKETCHES)
+def catalogue() -> Catalogue:
+    return Catalogue(SKETCHES)
 
 
 @pytest.fixture
@@ -72,8 +72,8 @@ def problems_of(reading: Callable[[], object]) -> list[str]:
 
 
 @pytest.mark.parametrize("name", NAMES)
-def test_every_sketch_is_read(library: Library, name: str) -> None:
-    found = library.block(name)
+def test_every_sketch_is_read(catalogue: Catalogue, name: str) -> None:
+    found = catalogue.block(name)
     assert found.name == name and found.about
 
 
@@ -85,8 +85,8 @@ def keys(entries: tuple[object, ...]) -> list[str]:
     return [entry.key.name for entry in entries]  # type: ignore[attr-defined]
 
 
-def test_the_sections_of_a_controller(library: Library) -> None:
-    pid = library.block("pid")
+def test_the_sections_of_a_controller(catalogue: Catalogue) -> None:
+    pid = catalogue.block("pid")
     assert list(pid.settings) == ["action", "form", "windup", "mode"]
     assert pid.settings["action"].default is None and pid.settings["action"].choices == ("reverse", "direct")
     assert isinstance(pid.settings["mode"].default, Formula) and isinstance(pid.settings["form"].default, Word)
@@ -104,13 +104,13 @@ def test_the_sections_of_a_controller(library: Library) -> None:
     assert isinstance(next(one for one in pid.let if one.key.name == "Kc").value, ByChoice)
 
 
-def test_the_sections_of_a_repeated_block(library: Library) -> None:
-    exchanger = library.block("heat_exchanger")
+def test_the_sections_of_a_repeated_block(catalogue: Catalogue) -> None:
+    exchanger = catalogue.block("heat_exchanger")
     assert exchanger.repeat is not None and (exchanger.repeat.letter, exchanger.repeat.over) == ("i", "n")
     assert Key("T_hot", Index("i")) in [state.key for state in exchanger.states]
     assert Key("T_hot", Index(None, 0)) in [one.key for one in exchanger.let]
     assert Key("T_cold", Index("n", 1)) in [one.key for one in exchanger.let]
-    mixing = library.block("mixing_tank")
+    mixing = catalogue.block("mixing_tank")
     assert next(one for one in mixing.parameters if one.key.name == "species").names == ("c",)
     assert mixing.streams["outlet"].carries == (
         (Key("q"), Key("q")),
@@ -118,18 +118,18 @@ def test_the_sections_of_a_repeated_block(library: Library) -> None:
     )
 
 
-def test_the_sections_of_other_blocks(library: Library) -> None:
-    pump = library.block("pumped_line")
+def test_the_sections_of_other_blocks(catalogue: Catalogue) -> None:
+    pump = catalogue.block("pumped_line")
     curve = next(one for one in pump.parameters if one.key.name == "curve")
     assert curve.table is not None and [unit.text for unit in curve.table] == ["m^3/h", "m"]
     assert isinstance(curve.unit, UnitText) and curve.unit.kind == "none"
     assert pump.solve[0].key == Key("q") and pump.solve[0].between is not None and not pump.solve[0].stops
     assert list(pump.faults) == ["tripped"]
-    loop = library.block("temperature_loop")
+    loop = catalogue.block("temperature_loop")
     assert loop.blocks["TT"].block == "temperature_transmitter" and loop.ports["out"] == "TIC.out"
     assert isinstance(loop.blocks["TIC"].values["action"], Given)
     assert (loop.wires[0].source, loop.wires[0].target) == ("TT.pv", "TIC.pv")
-    assert isinstance(library.block("reacting_tank").parameters[1].unit, ByChoice)
+    assert isinstance(catalogue.block("reacting_tank").parameters[1].unit, ByChoice)
 
 
 EVERY_SECTION = """about: What no sketch shows.
@@ -164,8 +164,8 @@ def test_sections_that_no_sketch_has() -> None:
     assert after.after is not None and after.after[0].value == 30 and after.after[1] == "c.sugar"
 
 
-def test_like_lays_entries_over_renamed_ones(library: Library) -> None:
-    sensor = library.block("temperature_transmitter")
+def test_like_lays_entries_over_renamed_ones(catalogue: Catalogue) -> None:
+    sensor = catalogue.block("temperature_transmitter")
     assert keys(sensor.inputs) == ["T"] and isinstance(sensor.inputs[0].unit, UnitText)
     assert sensor.inputs[0].unit.text == "degC" and sensor.inputs[0].about == "temperature of the liquid"
     span = sensor.parameters[0].unit
@@ -173,7 +173,7 @@ def test_like_lays_entries_over_renamed_ones(library: Library) -> None:
     assert sensor.balances[0].text == "lag*dsensed/dt = delayed(T, dead_time) - sensed"
     assert sensor.balances[0].where.file.endswith("transmitter.yaml")
     assert all("x" not in names_in(one.value.tree) for one in sensor.let if isinstance(one.value, Formula))
-    assert sensor.about == library.block("transmitter").about
+    assert sensor.about == catalogue.block("transmitter").about
 
 
 RENAMED = """about: One lag, every place where a name can stand.
@@ -289,8 +289,8 @@ def test_a_name_that_is_also_a_choice_is_not_renamed() -> None:
 def test_circles_of_likes(folder: Path) -> None:
     for name, other in (("one", "one"), ("two", "three"), ("three", "two")):
         write(folder, name, f"like: {other}\n")
-    assert problems_of(lambda: Library(folder).block("one")) == ["'like' goes in a circle: one -> one"]
-    assert problems_of(lambda: Library(folder).block("three")) == ["'like' goes in a circle: three -> two -> three"]
+    assert problems_of(lambda: Catalogue(folder).block("one")) == ["'like' goes in a circle: one -> one"]
+    assert problems_of(lambda: Catalogue(folder).block("three")) == ["'like' goes in a circle: three -> two -> three"]
 
 
 # ---------------------------------------------------------------- finding blocks
@@ -305,31 +305,31 @@ outputs: {y: {unit: like u}}
 
 def test_blocks_beside_the_plant_come_first_and_are_read_once(folder: Path) -> None:
     write(folder, "first_order_lag", LAG)
-    library = Library(folder)
-    assert library.block("first_order_lag").about == "our own"
-    assert library.block("first_order_lag") is library.block("first_order_lag")
-    assert "first_order_lag" in library.names() and list(library.names()) == sorted(library.names())
+    catalogue = Catalogue(folder)
+    assert catalogue.block("first_order_lag").about == "our own"
+    assert catalogue.block("first_order_lag") is catalogue.block("first_order_lag")
+    assert "first_order_lag" in catalogue.names() and list(catalogue.names()) == sorted(catalogue.names())
 
 
-def test_an_unknown_block_names_the_nearest(library: Library) -> None:
+def test_an_unknown_block_names_the_nearest(catalogue: Catalogue) -> None:
     with pytest.raises(InputError, match="there is no block 'heatd_tank'\n    did you mean 'heated_tank'"):
-        library.block("heatd_tank")
+        catalogue.block("heatd_tank")
 
 
 def test_two_files_of_one_name(folder: Path) -> None:
     write(folder, "twice", LAG)
     (folder / "blocks" / "twice.yaml").write_text("block: twice\nabout: x\n", encoding="utf-8")
     with pytest.raises(InputError, match="two files hold the block 'twice'"):
-        Library(folder).names()
+        Catalogue(folder).names()
 
 
 def test_a_broken_block_tells_its_problems_each_time(folder: Path) -> None:
     write(folder, "broken", "about: x\nparameters: {V: {}}\n")
-    library = Library(folder)
+    catalogue = Catalogue(folder)
     texts = set()
     for _ in range(2):
         with pytest.raises(InputError) as caught:
-            library.block("broken")
+            catalogue.block("broken")
         texts.add(str(caught.value))
     assert len(texts) == 1 and "'unit' is missing from the parameter 'V'" in texts.pop()
 

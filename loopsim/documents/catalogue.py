@@ -20,7 +20,7 @@ def shipped(kind: str) -> Path:
     raise FileNotFoundError(f"the folder of shipped {kind} is missing from the installation")
 
 
-class Library:
+class Catalogue:
     """The blocks that a plant can use: those in `blocks/` beside it, then the shipped ones."""
 
     def __init__(self, beside: Path) -> None:
