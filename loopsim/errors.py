@@ -106,6 +106,6 @@ def nearest(name: str, choices: Iterable[str], wanted: str = "known here") -> st
     if close:
         return "did you mean " + " or ".join(f"'{one}'" for one in close) + "?"
     if not known:
-        return f"nothing is {wanted}"
+        return "nothing is known here" if wanted == "known here" else f"there are no {wanted}"
     shown = ", ".join(known[:12]) + (", …" if len(known) > 12 else "")
     return f"{wanted}: {shown}"

@@ -124,6 +124,8 @@ def _unknown(model: Model, name: str) -> Implicit:
 def _refuse(model: Model, name: str) -> None:
     """A loop through an on/off quantity or an engine primitive has no slope to solve it by."""
     tree = model.assignments[name].tree if name in model.assignments else None
+    while isinstance(tree, Name) and tree.name in model.assignments and tree.name != name:
+        tree = model.assignments[tree.name].tree
     if tree is None or (isinstance(tree, Operation) and tree.operator in _LOGICAL):
         where = model.assignments[name].where if tree is not None else None
         raise fail(

@@ -24,7 +24,7 @@ class Program:
 
     `states`, `memory`, `parameters` map names to places in x, m, p; `watched` lists what pieces show, `recorded` what
     rows show; `motion` maps a moving slot to the place of its six numbers in p (base, slope, from, size, period,
-    phase); `divisors` are places in p that must not be zero, with the text that they stand for.
+    phase); `loops` are the equations that are solved together, in the order of their numbers.
     """
 
     text: str
@@ -41,6 +41,7 @@ class Program:
     conditions: tuple[Condition, ...]
     motion: dict[str, int]
     starts: tuple[float, ...]
+    loops: tuple[Loop, ...]
 
 
 class Bodies:

@@ -35,6 +35,7 @@ def generate(model: Model, wishes: Wishes) -> Program:
         wishes.conditions,
         bodies.motion,
         tuple(one.tie for one in bodies.analysis.switches.found),
+        tuple(bodies.loops),
     )
 
 

@@ -317,6 +317,9 @@ def _stopped(simulation: Simulation, outcome: Outcome) -> Status:
     elif outcome.code == "chatter":
         switch = program.switches[outcome.index]
         name, where = switch.tag, switch.where
+    elif outcome.code == "unsolved":
+        loop = program.loops[outcome.index - 1]
+        name, where = loop.unknowns[0], loop.where
     sentence = f"{outcome.sentence}: '{name}'" if name else outcome.sentence
     return Status("stopped", sentence, simulation.state.t, where)
 

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from pathlib import Path
-
 import pytest
 
 from loopsim.errors import ComputationError, InputError
@@ -31,48 +29,6 @@ wires:
   - TT-1.pv -> TIC-1.pv
   - TIC-1.out -> element.duty
 """
-
-CASES = [
-    ("unconnected input", GOOD.replace("  - feed_q -> tank.q\n", ""), LOOP, "plant.yaml:6:3: nothing drives the input 'tank.q'"),
-    ("two drivers", GOOD + "  - feed_T -> TT-1.T\n", LOOP, "'TT-1.T' has two drivers: 'feed_T'"),
-    ("unit clash", GOOD.replace("feed_T -> tank.T_in", "feed_q -> tank.T_in"), LOOP, "'feed_q' is in m^3/h but 'tank.T_in' wants degC"),
-    ("point for difference", GOOD.replace("is: 12 degC", "is: 285 K"), LOOP, "a difference (K)"),
-    ("unknown port", GOOD.replace("tank.T_in", "tank.T_inn"), LOOP, "'tank' (heated_tank) has no port or stream 'T_inn'"),
-    ("unknown block", GOOD.replace("heater_element", "heater_elment"), LOOP, "there is no block 'heater_elment'"),
-    ("unknown tag", GOOD, LOOP.replace("TT-1.pv", "TT-7.pv"), "'TT-7.pv' names no block and no boundary value"),
-    ("wrong way", GOOD, LOOP.replace("TT-1.pv -> TIC-1.pv", "TIC-1.pv -> TT-1.pv"), "'TT-1.pv' is an output; nothing can be wired to it"),
-    ("missing number", GOOD.replace(", V: 1.8 m^3", ""), LOOP, "'tank' (heated_tank) needs a value for 'V'"),
-    ("unknown key", GOOD.replace("V: 1.8", "Vol: 1.8"), LOOP, "'tank' (heated_tank) has no parameter, setting or input 'Vol'"),
-    ("bare number", GOOD.replace("200 kW", "200"), LOOP, "the bare number 200"),
-    ("wrong unit", GOOD.replace("200 kW", "200 kJ"), LOOP, "200 kJ where 'element.power' wants kW"),
-    ("bare per cent", GOOD, LOOP.replace("sp: 55 degC", "sp: 55 degC, bias: 40"), "the bare number 40 where 'TIC-1.bias' wants %"),
-    ("no choice", GOOD, LOOP.replace("action: reverse, ", ""), "'TIC-1' (pid) needs a choice for 'action'"),
-    ("wrong choice", GOOD, LOOP.replace("reverse", "revers"), "'action' cannot be 'revers'"),
-    ("falling range", GOOD, LOOP.replace("[0 degC, 100 degC]", "[100 degC, 0 degC]"), "'0 degC' is not above '100 degC'"),
-    ("same tag twice", GOOD, LOOP.replace("  TIC-1:", "  tank: {use: heated_tank, V: 1 m^3}\n  TIC-1:"), "the tag 'tank' is used twice"),
-    ("cut of nothing", GOOD, LOOP + "cut: [TT-1.pv -> element.duty]\n", "there is no wire 'TT-1.pv -> element.duty' to cut"),
-    ("set of nothing", GOOD, LOOP + "set: {TIC-9.gain: 2}\n", "'TIC-9.gain' names no boundary value and no block"),
-    ("positive feedback", GOOD, LOOP.replace("reverse", "direct"), "the loop of TIC-1 feeds back positively"),
-    ("given by itself", GOOD, LOOP.replace("sp: 55 degC", "sp: 55 degC, scan: scan"), "'TIC-1.scan' is given by itself"),
-    ("below its bound", GOOD.replace("V: 1.8 m^3", "V: -1 m^3"), LOOP, "'tank.V' is -1 m^3; it must be above 0 m^3"),
-]  # fmt: skip
-
-
-def told(folder: Path) -> str:
-    with pytest.raises(InputError) as caught:
-        source(folder, "loop").rested()
-    return str(caught.value)
-
-
-@pytest.mark.parametrize(
-    ("plant", "strategy", "expected"), [case[1:] for case in CASES], ids=[case[0] for case in CASES]
-)
-def test_each_mistake_is_told(write: Write, plant: str, strategy: str, expected: str) -> None:
-    """The sentence, a place in a file, and nothing about what follows from it."""
-    text = told(write({"plant.yaml": plant, "loop.yaml": strategy}))
-    assert expected in text
-    assert ".yaml:" in text
-    assert text.count(".yaml:") == 1, text
 
 
 def test_wrong_feedforward_is_caught_before_the_run(write: Write) -> None:
