@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Callable, Mapping, Sequence
+from concurrent.futures import ThreadPoolExecutor
 from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
@@ -17,7 +18,8 @@ from loopsim.model.choice import Source, scenario_sources
 from loopsim.model.types import Model
 from loopsim.results import Table, Trends
 from loopsim.simulation.actions import free_names
-from loopsim.simulation.case import Case, case_of, compile_ahead, run_case
+from loopsim.simulation.case import Case, assembled, at_rest, case_of, run_case, text_of
+from loopsim.simulation.machine import build
 from loopsim.study.checks import check_scenario
 from loopsim.study.compare import compare
 from loopsim.study.export import comparison_json, to_json
@@ -172,16 +174,20 @@ def _judged(
     scenario: Scenario, sources: Mapping[str, Source], point: str, names: tuple[str, ...], native: bool
 ) -> tuple[Judged, ...]:
     problems, cases, failures = Problems(), dict[str, Case](), dict[str, str]()
-    for name, source in sources.items():
-        with problems.collecting():
-            try:
-                cases[name] = case_of(name, scenario, source, point)
-            except ComputationError as error:
-                failures[name] = f"{error.problems[0].what}; {error.problems[0].hint}"
+    wanted: dict[str, tuple[str, ...]] = {}
+    # machine code is made beside the search for rests: most of that work runs outside Python
+    with ThreadPoolExecutor(2) as pool:
+        for name, source in sources.items():
+            with problems.collecting():
+                case = assembled(name, scenario, source, point)
+                wanted[name] = (*names, *names_to_judge(case))
+                if native:
+                    pool.submit(build, text_of(case, wanted[name]))
+                try:
+                    cases[name] = at_rest(case, source, point)
+                except ComputationError as error:
+                    failures[name] = f"{error.problems[0].what}; {error.problems[0].hint}"
     problems.raise_if_any()
-    wanted = {name: (*names, *names_to_judge(case)) for name, case in cases.items()}
-    if native:
-        compile_ahead([(case, wanted[name]) for name, case in cases.items()])
     runs = [
         not_run(name, failures[name], seconds(scenario.lasts))
         if name in failures

@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from loopsim.documents.types import Scenario
 from loopsim.language.units import to_si
@@ -13,7 +12,6 @@ from loopsim.model.rest import OperatingPoint
 from loopsim.model.types import Model
 from loopsim.simulation.actions import free_names
 from loopsim.simulation.conditions import resolve
-from loopsim.simulation.machine import build
 from loopsim.simulation.run import RunResult, prepare, program_of, run
 
 ROWS = 1000  # recorded rows of a run that does not say how often it records
@@ -35,23 +33,23 @@ def case_of(name: str, scenario: Scenario, source: Source, point: str = "") -> C
 
     Raises `InputError` for wrong signs and other mistakes, `ComputationError` where there is no rest.
     """
+    return at_rest(assembled(name, scenario, source, point), source, point)
+
+
+def assembled(name: str, scenario: Scenario, source: Source, point: str = "") -> Case:
+    """A case whose rest is still to be found."""
     law = source.law(point)
-    model = source.timed(free_names(scenario.events, law), point)
-    resting = source.rested(point) if scenario.starts == "steady" else None
-    return Case(name, scenario, model, law, resting)
+    return Case(name, scenario, source.timed(free_names(scenario.events, law), point), law, None)
 
 
-def compile_ahead(cases: Iterable[tuple[Case, Iterable[str]]]) -> None:
-    """Compile the programs of several cases, each with the names it judges, at once.
+def at_rest(case: Case, source: Source, point: str = "") -> Case:
+    """The case at its operating point, where it starts steady."""
+    return replace(case, point=source.rested(point)) if case.scenario.starts == "steady" else case
 
-    Most of that work runs outside Python and can be shared out.
-    """
-    texts = {
-        program_of(one.model, one.scenario, _judged(one, names), recorded_names(one))[1].text for one, names in cases
-    }
-    if len(texts) > 1:
-        with ThreadPoolExecutor(2) as pool:
-            list(pool.map(build, texts))
+
+def text_of(case: Case, judged: Iterable[str]) -> str:
+    """The program of a case as text, ready to be compiled; its rest need not be known."""
+    return program_of(case.model, case.scenario, _judged(case, judged), recorded_names(case))[1].text
 
 
 def run_case(case: Case, judged: Iterable[str], number: int = 0, native: bool = True) -> RunResult:
