@@ -75,8 +75,11 @@ def status_of(arguments: list[str] | None = None) -> int:
 
 def _told(error: Exception, as_json: bool) -> int:
     """The status of an error after it has been told: located problems, or a fault of ours."""
-    from loopsim.errors import ComputationError, LoopsimError
+    from loopsim.errors import ComputationError, LoopsimError, fail
 
+    if isinstance(error, OSError) and error.filename is not None:  # the system refuses a file or a folder
+        cure = "look at the name, the rights and the room on the disk"
+        error = fail(f"'{error.filename}': {error.strerror}", None, cure)
     if not isinstance(error, LoopsimError):
         traceback.print_exc()
         click.echo("This is a fault of loopsim, not of your files. Please report it with the lines above.", err=True)

@@ -21,6 +21,7 @@ class RunFolder:
         self._drawing = Drawing()
 
     def __enter__(self) -> RunFolder:
+        self.path.mkdir(parents=True, exist_ok=True)
         self._drawing.__enter__()
         return self
 
@@ -31,12 +32,10 @@ class RunFolder:
         """Begin the picture of a scenario that has been judged."""
         figure = run_figure(judgement.scenario, judgement.strategies)
         if figure is not None:
-            self.path.mkdir(parents=True, exist_ok=True)
             self._drawing.draw(figure, self.path / _stem(judgement))
 
     def finish(self, report: RunReport) -> dict[str, dict[str, str]]:
         """Write all that is not a picture; gives the trends' file names by title of the judgement and by strategy."""
-        self.path.mkdir(parents=True, exist_ok=True)
         names = {one.title: _write_trends(one, self.path, len(report.judgements) == 1) for one in report.judgements}
         every = [one for judgement in report.judgements for one in judgement.strategies]
         (self.path / "results.json").write_text(json_text(report.json(names)) + "\n", encoding="utf-8")
