@@ -7,9 +7,12 @@ import math
 
 import numpy as np
 
+from loopsim.errors import fail
 from loopsim.model.types import Model
 from loopsim.simulation.bodies import Program
 from loopsim.simulation.machine import Machine
+
+MOST_DRAWS = 20_000_000  # of one source in one run
 
 
 def normals(seed: int, run: int, key: str, count: int) -> list[float]:
@@ -33,6 +36,11 @@ def draws(
     every = [0.0] * len(program.noises)
     machine.timing(p, *periods, every)
     counts = [math.floor(lasts / one + 1e-6) + 2 if one > 0 else 1 for one in every]
+    for name, count in zip(program.noises, counts, strict=True):
+        if count > MOST_DRAWS:
+            noise = model.noises[name]
+            cure = f"at most {MOST_DRAWS:.0e} can be; draw less often, or run for a shorter time"
+            raise fail(f"the noise of '{noise.tag}' would be drawn {count} times", noise.where, cure)
     return [
         normals(seed, run, model.noises[name].key, count) for name, count in zip(program.noises, counts, strict=True)
     ]

@@ -10,7 +10,7 @@ from loopsim.language.dimensions import Dimension
 from loopsim.language.units import ATMOSPHERE, Unit, difference_of, parse_unit
 from loopsim.model.scales import si_value
 from loopsim.model.types import Model
-from loopsim.simulation.actions import Actions, check_target, lacking, not_applicable
+from loopsim.simulation.actions import Actions, check_target, lacking, not_applicable, seconds
 from loopsim.simulation.conditions import conditions_of
 from loopsim.study.rules import per_step
 
@@ -26,6 +26,7 @@ SCALES = {
     "iae": "times time",
     "rate": "per time",
 }
+MOST_ROWS = 2_000_000  # recorded rows of a run
 
 
 def check_scenario(scenario: Scenario, models: Mapping[str, Model], problems: Problems) -> None:
@@ -43,7 +44,22 @@ def check_scenario(scenario: Scenario, models: Mapping[str, Model], problems: Pr
         for items in (model.states, model.memory, model.slots):
             units.update({name: one.unit for name, one in items.items()})
     loops = {one.tag for model in models.values() for one in model.controllers}
+    _check_record(scenario, units, problems)
     check_rules(scenario.accept, units, loops, problems, next(iter(models.values())).air_pressure)
+
+
+def _check_record(scenario: Scenario, units: Mapping[str, Unit], problems: Problems) -> None:
+    """What is recorded must be there, in a number of rows that can be kept."""
+    for name in scenario.record_signals or ():
+        elements = any(one.startswith(f"{name}.") for one in units)
+        if name not in units and not elements:
+            problems.add(f"no signal is called '{name}'", scenario.where, nearest(name, units, "signals"))
+    every = scenario.record_every
+    rows = seconds(scenario.lasts) / seconds(every) if every is not None else 0.0
+    if every is not None and rows > MOST_ROWS:
+        problems.add(
+            f"a row every {every.text} makes {rows:.3g} rows", every.where, f"at most {MOST_ROWS:.0e} are kept"
+        )
 
 
 def _check_event(
