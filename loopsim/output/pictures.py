@@ -29,6 +29,7 @@ COLOURS = ("#1b5e8c", "#c2571a", "#3b7d4f", "#b0348f", "#8a6d00", "#555555")  # 
 LINES = ((2.6, "-"), (1.7, (0, (6, 2))), (2.1, "-"), (1.4, (0, (4, 4))))
 ALONE: Pen = ("#333333", 1.3, "-")
 WIDTH, HEIGHT, HEAD, FOOT = 9.0, 2.3, 0.35, 0.5  # inches: the picture, one panel, above and below them
+LABEL = -0.095  # of a panel's width: where the names of the y axes stand
 LEFT, RIGHT = 0.09, 0.84  # margins as shares: room for axis labels and the legend
 ROW = 0.13  # inches: one row of marks or notes
 LETTER = 0.06  # inches: the width of a letter of a mark
@@ -108,7 +109,8 @@ def _drawn(figure: Figure) -> Page:
     _marks(axes, figure, rows)
     axes[-1].set_xlabel(figure.x_label)
     _ticks(axes[-1], figure)
-    drawing.align_ylabels(axes)
+    for one in axes:
+        one.yaxis.set_label_coords(LABEL, 0.5)  # below each other, without measuring all the numbers
     drawing.text(0.01, 1 - 0.1 / height, figure.title, ha="left", va="top", fontsize=11)
     for number, note in enumerate(reversed(notes)):
         drawing.text(0.01, (0.08 + ROW * number) / height, note, ha="left", fontsize=7, color="#444444")
@@ -135,7 +137,7 @@ def _panel(axes: Axes, panel: Panel, pens: dict[str, Pen]) -> None:
     axes.margins(x=0)
     for band in panel.bands:
         axes.fill_between(band.x, band.low, band.high, step="post", color="#000000", alpha=0.07, lw=0, zorder=0)
-        axes.annotate(band.name, (float(band.x[-1]), float(band.high[-1])), xytext=(-3, -2), ha="right", va="top",
+        axes.annotate(band.name, (float(band.x[-1]), float(band.high[-2 if len(band.high) > 1 else -1])), xytext=(-3, -2), ha="right", va="top",
                       textcoords="offset points", fontsize=7, color="#666666")  # fmt: skip
     for curve in panel.curves:
         _curve(axes, curve, pens)
