@@ -9,7 +9,20 @@ import pytest
 
 PACKAGE = Path(__file__).parents[1] / "loopsim"
 LAYERS = [
-    *("errors", "language", "documents", "results", "model", "native", "simulation", "study", "api", "output", "cli"),
+    *(
+        "errors",
+        "store",
+        "language",
+        "documents",
+        "results",
+        "model",
+        "native",
+        "simulation",
+        "study",
+        "api",
+        "output",
+        "cli",
+    ),
 ]
 FILES = sorted(PACKAGE.rglob("*.py"))
 

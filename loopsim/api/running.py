@@ -207,13 +207,13 @@ def computing(source: Source) -> frozenset[str]:
 
     In a plant such a block stands for something physical, such as two flows that meet.
     """
-    return frozenset(
-        tag
-        for diagram in source.diagrams
-        if diagram.kind == "strategy"
-        for use in diagram.blocks.values()
-        for tag in _computing(source.catalogue, use.tag, use.block)
-    )
+
+    def find() -> frozenset[str]:
+        uses = [use for one in source.diagrams if one.kind == "strategy" for use in one.blocks.values()]
+        return frozenset(tag for use in uses for tag in _computing(source.catalogue, use.tag, use.block))
+
+    found: frozenset[str] = source.once("computing", find)
+    return found
 
 
 def _computing(catalogue: Catalogue, tag: str, name: str) -> list[str]:

@@ -185,6 +185,10 @@ _FACTOR = r"(?:[^\W\d]\w*|%|\0)(?:\s*\^\s*-?(?:[1-9]|\d\.\d*[1-9]))?"
 _PRODUCT = re.compile(rf"\s*(?:1|{_FACTOR})(?:\s*\*\s*{_FACTOR})*(?:\s*/\s*{_FACTOR})*\s*")
 
 
+# what runs and rules ask for all the time, told without loading the registry
+PLAIN = {"s": ("s", 1.0), "min": ("s", 60.0), "h": ("s", 3600.0), "K": ("K", 1.0)}
+
+
 @cache
 def _registry() -> UnitRegistry[float]:
     """A registry that knows the allowed units and nothing else."""
@@ -204,6 +208,9 @@ def parse_unit(text: str) -> Unit:
         return Unit(wanted, 1.0, 0.0, Dimension())
     if wanted == "%":
         return Unit("%", 0.01, 0.0, Dimension())
+    if wanted in PLAIN:
+        base, factor = PLAIN[wanted]
+        return Unit(wanted, factor, 0.0, Dimension.of({base: 1}))
     if wanted in POINTS:
         base, factor, offset = POINTS[wanted]
         return Unit(wanted, factor, offset, parse_unit(base).dimension, True)

@@ -266,7 +266,7 @@ class Givens(Translator):
         raise NotImplementedError
 
     def _check_units(self, flat: str, source: str, unit: Unit, from_unit: Unit, where: Where) -> None:
-        if unit.dimension != from_unit.dimension or (unit is ON_OFF) != (from_unit is ON_OFF):
+        if unit.dimension != from_unit.dimension or (unit == ON_OFF) != (from_unit == ON_OFF):
             self.draft.problems.add(
                 f"'{source}' is in {from_unit.text} but '{flat}' wants {unit.text}",
                 where,

@@ -142,17 +142,17 @@ def _unit_of_value(value: Value) -> Unit | None:
 def si_value(value: Quantity | Word, unit: Unit, problems: Problems, air_pressure: float, what: str) -> float:
     """A written value in SI, checked against the unit of the place where it stands; a problem and nan otherwise."""
     if isinstance(value, Word):
-        if unit is ON_OFF and value.text in TRUE_WORDS + FALSE_WORDS:
+        if unit == ON_OFF and value.text in TRUE_WORDS + FALSE_WORDS:
             return float(value.text in TRUE_WORDS)
         problems.add(f"'{value.text}' where {what} wants {_wanted(unit)}", value.where, "write a number and its unit")
         return float("nan")
     if value.unit is None:
         return _bare(value, unit, problems, what)
-    if value.unit.dimension != unit.dimension or unit is ON_OFF:
+    if value.unit.dimension != unit.dimension or unit == ON_OFF:
         problems.add(
             f"{value.text} where {what} wants {_wanted(unit)}",
             value.where,
-            f"write it in {unit.text}" if unit is not ON_OFF else "write on or off",
+            f"write it in {unit.text}" if unit != ON_OFF else "write on or off",
         )
         return float("nan")
     if value.unit.point != unit.point:
@@ -164,18 +164,18 @@ def si_value(value: Quantity | Word, unit: Unit, problems: Problems, air_pressur
 def _bare(value: Quantity, unit: Unit, problems: Problems, what: str) -> float:
     if unit in (COUNT,) or unit.text == "dimensionless":
         return value.value
-    if value.value == 0 and not unit.point and unit is not ON_OFF:
+    if value.value == 0 and not unit.point and unit != ON_OFF:
         return 0.0
     problems.add(
         f"the bare number {value.text} where {what} wants {_wanted(unit)}",
         value.where,
-        "write on or off" if unit is ON_OFF else f"write the unit: {value.text} {unit.text}",
+        "write on or off" if unit == ON_OFF else f"write the unit: {value.text} {unit.text}",
     )
     return float("nan")
 
 
 def _wanted(unit: Unit) -> str:
-    if unit is ON_OFF:
+    if unit == ON_OFF:
         return "on or off"
     kind = "a point on the scale of " if unit.point else ""
     return f"{kind}{unit.text}"

@@ -196,7 +196,8 @@ class Controller:
 class Model:
     """A plant with its strategies, ready to be ordered, solved, linearised and run.
 
-    `law` models have the continuous law in place of every scan and dead times passed through.
+    `law` models have the continuous law in place of every scan and dead times passed through. `key` names what
+    it was made from ('' where that is not told), so that what follows from it can be kept on disk.
     """
 
     name: str
@@ -220,3 +221,4 @@ class Model:
     air_pressure: float = 101325.0
     assumed: tuple[str, ...] = ()
     notes: tuple[str, ...] = ()
+    key: str = ""

@@ -5,8 +5,6 @@ from __future__ import annotations
 import ctypes
 import ctypes.util
 import hashlib
-import os
-import tempfile
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
@@ -15,6 +13,7 @@ from typing import Any
 import llvmlite
 import llvmlite.binding as llvm
 
+from loopsim import store
 from loopsim.native.compiler import Module
 from loopsim.native.kinds import LIBRARY
 
@@ -49,10 +48,11 @@ def build_native(text: str, entries: Mapping[str, tuple[str, ...]], cache: Path 
     machine = _target_machine()
     key = _key(text, entries, machine)
     path = cache / f"{key}.o" if cache is not None else None
-    code = _read(path)
+    code = store.read(path) if path is not None else None
     if code is None:
         code = _compiled(text, entries, machine)
-        _write(path, code)
+        if path is not None:
+            store.write(path, code)
     owner = llvm.create_mcjit_compiler(llvm.parse_assembly(""), _target_machine())
     owner.add_object_file(llvm.ObjectFileRef.from_data(code))
     owner.finalize_object()
@@ -117,24 +117,3 @@ def _compiled(text: str, entries: Mapping[str, tuple[str, ...]], machine: Any) -
     passes.add_dead_code_elimination_pass()
     passes.run(parsed, builder)
     return bytes(machine.emit_object(parsed))
-
-
-def _read(path: Path | None) -> bytes | None:
-    try:
-        return path.read_bytes() if path is not None else None
-    except OSError:
-        return None
-
-
-def _write(path: Path | None, code: bytes) -> None:
-    """Write a file that other processes see whole or not at all; a folder that cannot be written is left alone."""
-    if path is None:
-        return
-    try:
-        path.parent.mkdir(parents=True, exist_ok=True)
-        handle, name = tempfile.mkstemp(dir=path.parent)
-        with os.fdopen(handle, "wb") as file:
-            file.write(code)
-        os.replace(name, path)
-    except OSError:
-        return

@@ -137,7 +137,8 @@ def _panel(axes: Axes, panel: Panel, pens: dict[str, Pen]) -> None:
     axes.margins(x=0)
     for band in panel.bands:
         axes.fill_between(band.x, band.low, band.high, step="post", color="#000000", alpha=0.07, lw=0, zorder=0)
-        axes.annotate(band.name, (float(band.x[-1]), float(band.high[-2 if len(band.high) > 1 else -1])), xytext=(-3, -2), ha="right", va="top",
+        end = float(band.x[-1]), float(band.high[-2 if len(band.high) > 1 else -1])
+        axes.annotate(band.name, end, xytext=(-3, -2), ha="right", va="top",
                       textcoords="offset points", fontsize=7, color="#666666")  # fmt: skip
     for curve in panel.curves:
         _curve(axes, curve, pens)

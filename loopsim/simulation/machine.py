@@ -9,18 +9,17 @@ import hashlib
 import importlib
 import linecache
 import math
-import os
 from collections.abc import Callable, Sequence
 from copy import deepcopy
 from dataclasses import dataclass, field
 from functools import lru_cache
 from importlib.resources import files
-from pathlib import Path
 from types import SimpleNamespace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from loopsim import store
 from loopsim.results import FloatArray
 from loopsim.simulation.guarded import GUARDED_FUNCTIONS
 from loopsim.simulation.unrolled import unrolled
@@ -136,14 +135,8 @@ def _native(text: str) -> Native | None:
         compiler = importlib.import_module("loopsim.native.build")
     except ImportError:
         return None
-    built: Native = compiler.build_native(text, {"advance": ADVANCE, "carry_out": CARRY_OUT}, cache_folder())
+    built: Native = compiler.build_native(text, {"advance": ADVANCE, "carry_out": CARRY_OUT}, store.folder())
     return built
-
-
-def cache_folder() -> Path:
-    """Where compiled plants are kept: LOOPSIM_CACHE, else the user's cache folder; deleting it is always safe."""
-    named = os.environ.get("LOOPSIM_CACHE")
-    return Path(named) if named else Path(os.environ.get("XDG_CACHE_HOME", Path.home() / ".cache")) / "loopsim"
 
 
 def _sizes(text: str) -> dict[str, int]:

@@ -10,6 +10,7 @@ from functools import lru_cache
 
 import numpy as np
 
+from loopsim import store
 from loopsim.documents.types import Event, Scenario
 from loopsim.errors import Problems
 from loopsim.language.units import from_si
@@ -132,7 +133,7 @@ def program_of(
         for number, event in enumerate(scenario.events)
         if event.kind in ("ramp", "sine", "follow") and number not in skipped
     )
-    flags = {name: name for name, signal in model.signals.items() if signal.unit is ON_OFF and resolve(model, name)}
+    flags = {name: name for name, signal in model.signals.items() if signal.unit == ON_OFF and resolve(model, name)}
     watched = dict(sorted({**flags, **judged}.items()))
     wishes = Wishes(tuple(dict.fromkeys(watched.values())), tuple(recorded.values()), conditions, moving)
     return watched, _generated(model, wishes), owners
@@ -140,8 +141,10 @@ def program_of(
 
 @lru_cache(maxsize=64)
 def _generated(model: Model, wishes: Wishes) -> Program:
-    """The program of a model; scenarios that want the same share it."""
-    return generate(model, wishes)
+    """The program of a model; scenarios that want the same share it, and later processes too."""
+    if not model.key:
+        return generate(model, wishes)
+    return store.kept(store.digest([model.key, repr(wishes)]), lambda: generate(model, wishes))
 
 
 # ---------------------------------------------------------------- events
@@ -341,7 +344,7 @@ def _log(simulation: Simulation, pieces: Pieces) -> tuple[LogEntry, ...]:
     model, found = simulation.model, list(simulation.log)
     for place, name in enumerate(pieces.names):
         signal = model.signals.get(name)
-        if signal is None or signal.unit is not ON_OFF:
+        if signal is None or signal.unit != ON_OFF:
             continue
         path = pieces.samples[:, [0, 4], place].ravel() > 0.5
         times = np.stack([pieces.start, pieces.start + pieces.length], axis=1).ravel()

@@ -7,6 +7,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from loopsim.language import units
 from loopsim.language.units import ALLOWED, UnitError, difference_of, from_si, parse_unit, to_si
 
 # Source: SI brochure (9th edition) for SI units and those accepted with it; NIST Special Publication 811 (2008),
@@ -127,3 +128,9 @@ def test_the_list_agrees_with_other_definitions() -> None:
 def test_round_trip(value: float, text: str) -> None:
     unit = parse_unit(text)
     assert from_si(to_si(value, unit), unit) == pytest.approx(value, rel=1e-12, abs=1e-9)
+
+
+def test_units_told_without_the_registry_are_those_of_the_registry() -> None:
+    """Against pint, which the other units come from."""
+    for text in units.PLAIN:
+        assert units.parse_unit(text) == units._compound(text)
