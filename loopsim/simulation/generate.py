@@ -12,6 +12,7 @@ from loopsim.model.types import PRIME, Assignment, Latch, Model, ScanLatch, Scan
 from loopsim.simulation.analysis import Wishes, switch_numbers
 from loopsim.simulation.bodies import ARRAYS, Bodies, Program
 from loopsim.simulation.loops import loop_functions
+from loopsim.simulation.slopes import slopes_functions
 from loopsim.simulation.text import Writer, number_text
 
 DEAD_ZONE = 1e-12
@@ -47,6 +48,7 @@ def _functions(bodies: Bodies) -> Iterator[str]:
     for number, loop in enumerate(bodies.loops):
         yield from loop_functions(bodies, loop, number)
     yield _rates(bodies)
+    yield from slopes_functions(bodies)
     yield _listed(bodies, "watched", "w", list(bodies.watched))
     yield _listed(bodies, "recorded", "r", list(bodies.wishes.recorded))
     yield _switches(bodies)

@@ -27,12 +27,13 @@ from loopsim.simulation.unrolled import unrolled
 if TYPE_CHECKING:
     from loopsim.native.build import Native
 
-ENGINE = ("mathematics", "history", "stepping", "switching", "echoes", "recording", "advance")
+ENGINE = ("mathematics", "history", "stepping", "switching", "echoes", "recording", "implicit", "advance")
 ECHOES = 256  # echoes that one dead time can hold; more are left to error control
 CAPACITY = 2000  # pieces that the engine can hold before they are put aside
 STEPS = 20000  # steps of one call of the engine
 RELATIVE = 1e-8  # default tolerance of a step
 MOST_STEPS = 50_000_000
+MOST_IMPLICIT = 60  # states: with more of them the implicit method's full matrices cost more than they save
 # kinds of the arguments of what is compiled: f number, i whole number, F and I arrays of them, P array of arrays
 STATE = ("F", "I", "F", "F", "F", "F", "F", "I", "F", "P", "F", "F")
 TIMES = ("F", "F", "F", "I", "I", "F", "I", "F")
@@ -103,13 +104,19 @@ class RunState:
     def record_every(self, every: float) -> None:
         self.e[2] = every
 
+    def record_end(self, end: float) -> None:
+        """Have a row written at the end [s] too, where the interval does not fall on it."""
+        every = self.record_every
+        if every > 0 and abs(round(end / every) * every - end) > 1e-10 * (1.0 + end):
+            self.e[2], self.j[3] = end, 1
+
     def copy(self) -> RunState:
         """A snapshot."""
         return deepcopy(self)
 
     def statistics(self) -> dict[str, int]:
-        """Steps taken and tries rejected."""
-        return {"steps": int(self.j[0]), "rejected": int(self.j[1])}
+        """Steps taken, those among them by the implicit method, and tries rejected."""
+        return {"steps": int(self.j[0]), "implicit": int(self.j[17]), "rejected": int(self.j[1])}
 
 
 @lru_cache(maxsize=64)
@@ -120,7 +127,8 @@ def build(model_text: str, native: bool = True) -> Machine:
     """
     sizes = _sizes(model_text)
     engine = "\n".join((files("loopsim.simulation.engine") / f"{part}.py").read_text("utf-8") for part in ENGINE)
-    constants = f"STRIDE = {2 + 5 * sizes['NW']}\nECHOES = {ECHOES}\n"
+    implicit, worth = int(sizes["NX"] <= MOST_IMPLICIT), 2.0 + sizes["NX"] / 10.0
+    constants = f"STRIDE = {2 + 5 * sizes['NW']}\nECHOES = {ECHOES}\nIMPLICIT = {implicit}\nWORTH = {worth}\n"
     text = "\n".join([constants, model_text, "\n".join(unrolled(sizes["NX"])), engine])
     filename = f"<model {hashlib.sha256(text.encode()).hexdigest()[:12]}>"
     linecache.cache[filename] = (len(text), None, text.splitlines(keepends=True), filename)
@@ -177,7 +185,7 @@ def start(
     stride = 2 + 5 * sizes.NW
     arrays: list[Sequence[Any]] = [
         [0.0, 1.0, 0.0, 0.0, *([0.0] * 12), *([-1.0] * sizes.NC)],
-        [0] * 16,
+        [0] * 20,
         *(x, m, p, first_positions),
         [0.0] * (stride * CAPACITY),
         n,
@@ -195,9 +203,12 @@ def start(
 
 
 def _work(machine: Machine) -> tuple[list[list[float]], list[float], list[float]]:
-    """Work arrays: stages and states, then w, samples, switch marks, a row, rates and states on a tie; g; c."""
+    """Work arrays: stages and states, w, samples, switch marks, a row, rates and states on a tie, facts of the try
+    (span of a tie, method, stiffness, method tried), matrices and more of the implicit method; then g and c."""
     sizes = machine.module
-    widths = [*([sizes.NX] * 10), sizes.NW, 5 * sizes.NW, sizes.NB, sizes.NR, sizes.NX, sizes.NX, sizes.NX, 1]
+    widths = [*([sizes.NX] * 10), sizes.NW, 5 * sizes.NW, sizes.NB, sizes.NR, sizes.NX, sizes.NX, sizes.NX, 4]
+    square = sizes.NX**2 if sizes.IMPLICIT else 0
+    widths += [square, square, sizes.NX, sizes.NX, sizes.NX]
     f = [_array(machine, [0.0] * width) for width in widths]
     return f, _array(machine, [0.0] * sizes.NB), _array(machine, [0.0] * sizes.ND)
 

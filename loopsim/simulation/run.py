@@ -254,6 +254,7 @@ def _outcome(simulation: Simulation, outcome: Outcome) -> Status:
     if outcome.code not in ("reached", "condition"):
         return _stopped(simulation, outcome)
     if outcome.code == "reached" and simulation.state.t >= simulation.lasts - _tie(simulation.lasts):
+        simulation.state.record_end(simulation.lasts)
         _finish(simulation)
     return conditions_turned(simulation)
 

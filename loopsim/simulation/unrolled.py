@@ -74,7 +74,7 @@ def unrolled(count: int) -> Iterator[str]:
         ],
     )
     yield "    return worst + 0.0*total\n"
-    yield "def dense(share, step, x, f, y):"
+    yield "def dense_explicit(share, step, x, f, y):"
     names = ("k1", "k2", "k3", "k4", "k5", "k6", "k7")
     yield from (f"    {name} = f[{place}]" for place, name in enumerate(names))
     yield "    new = f[8]\n    rest = 1.0 - share"

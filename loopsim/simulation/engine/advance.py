@@ -1,11 +1,12 @@
 # Restricted Python: from boundary to boundary. See DEVELOPERS.md, "The generated text".
 # e: floats - 0 time, 1 proposed step, 2 record interval (0: none), 3 time of the last flips, 4 of the last flip of the
 #    switch in j[8], 5 last step that ended without a flip,
-#    6 span over which a tie is looked at, 7 the step to try, 16 + k last execution of task k
+#    6 span over which a tie is looked at, 7 the step to try, 8 and 9 see choose_method, 16 + k last execution of task k
 # n[7]: 1 + the switch that rests on its tie, 0 for none
 # j: ints - 0 steps, 1 rejections, 2 flips at one place, 3 number of the next row, 4 rows written, 5 index that a status
 #    speaks of, 6 rates at t are stale, 7 the state at t is a boundary still to be carried out, 8 and 9 the switch that turned last and how often
-#    at one place, 10 the step ends at a boundary, 11 to 13 see first_stop
+#    at one place, 10 the step ends at a boundary, 11 to 13 see first_stop, 14 the method (1: implicit), 15 to 18 see
+#    choose_method
 # Statuses: 0 reached, 1 pieces full, 2 step too small, 3 not finite, 4 steps used up, 5 equation unsolved, 6 condition,
 # 7 chatter
 
@@ -91,7 +92,7 @@ def commit(t, step, at_boundary, x, m, p, b, h, n, z, f, rows, j, e):
         x[i] = new[i]
         k1[i] = k7[i]
     j[0] = j[0] + 1
-    j[6] = 0
+    j[6] = 1 if f[17][3] > 0.5 else 0
     return 0.0
 
 
@@ -214,6 +215,7 @@ def take_step(share, limit, until, e, j, x, m, p, b, h, n, z, f, g, q, rows):
 def advance(until, budget, e, j, x, m, p, b, h, n, z, f, g, c, q, period, phase, every, scans, draws, pending, waiting, rows):
     goal = j[0] + budget
     f[17][0] = e[6]
+    f[17][1] = 1.0 * j[14]
     while e[0] < until - tie_of(until):
         t = e[0]
         if j[7] == 1:
@@ -246,6 +248,8 @@ def advance(until, budget, e, j, x, m, p, b, h, n, z, f, g, c, q, period, phase,
         share = first_stop(t, e[7], j, x, m, p, b, h, n, z, f, g, c, pending, waiting)
         status = take_step(share, limit, until, e, j, x, m, p, b, h, n, z, f, g, q, rows)
         e[1] = proposal
+        choose_method(e[0] - t, e, j, f)
+        f[17][1] = 1.0 * j[14]
         if status > 0:
             return status
     return 0
