@@ -58,6 +58,7 @@ def _strategy(one: Judged, trend: str | None) -> Json:
             "sentence": status.sentence,
             "at_s": status.time if status.code != "done" else None,
         },
+        "steps": dict(one.run.trends.statistics),
         "events_not_applicable": list(one.run.skipped),
         "assumed": list(one.run.trends.assumed),
         "remarks": list(one.run.remarks),
