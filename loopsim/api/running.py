@@ -20,6 +20,7 @@ from loopsim.results import Table, Trends
 from loopsim.simulation.actions import free_names
 from loopsim.simulation.case import Case, assembled, at_rest, case_of, run_case, text_of
 from loopsim.simulation.machine import build
+from loopsim.simulation.run import PATIENCE
 from loopsim.study.checks import check_scenario
 from loopsim.study.compare import compare
 from loopsim.study.export import comparison_json, to_json
@@ -89,12 +90,13 @@ def run(
     points: Sequence[str] = (),
     native: bool = True,
     judged: Callable[[Judgement], None] = lambda one: None,
+    patience: float = PATIENCE,
 ) -> RunReport:
     """Run and judge every strategy of the scenarios (files, or folders that hold them).
 
     `points`: operating points of the plant, `all` for every one of them; by default those that the scenario names, or
     the plant's own values. `native`: compiled, else interpreted (the same bits). `judged` is called with each
-    judgement as soon as it stands.
+    judgement as soon as it stands. `patience` [s] is how long the computing of one run may take.
 
     Raises `InputError`; a strategy that cannot be computed is told in its column, and the others go on.
     """
@@ -113,7 +115,7 @@ def run(
     names = tuple(dict.fromkeys(name for _, scenario, _, _ in plans for name in rule_names(scenario)))
     judgements = []
     for path, scenario, sources, point in plans:
-        strategies = _judged(scenario, sources, point, names, native)
+        strategies = _judged(scenario, sources, point, names, native, patience)
         judgements.append(Judgement(scenario, point, run_id(path, scenario, point), strategies))
         judged(judgements[-1])
     every = [one for judgement in judgements for one in judgement.strategies]
@@ -171,7 +173,12 @@ def scenario_files(paths: Sequence[Path]) -> list[Path]:
 
 
 def _judged(
-    scenario: Scenario, sources: Mapping[str, Source], point: str, names: tuple[str, ...], native: bool
+    scenario: Scenario,
+    sources: Mapping[str, Source],
+    point: str,
+    names: tuple[str, ...],
+    native: bool,
+    patience: float,
 ) -> tuple[Judged, ...]:
     problems, cases, failures = Problems(), dict[str, Case](), dict[str, str]()
     wanted: dict[str, tuple[str, ...]] = {}
@@ -191,7 +198,9 @@ def _judged(
     runs = [
         not_run(name, failures[name], seconds(scenario.lasts))
         if name in failures
-        else run_of(cases[name], run_case(cases[name], wanted[name], native=native), computing(source))
+        else run_of(
+            cases[name], run_case(cases[name], wanted[name], native=native, patience=patience), computing(source)
+        )
         for name, source in sources.items()
     ]
     return tuple(

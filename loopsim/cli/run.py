@@ -25,6 +25,7 @@ from loopsim.output.text import render
 @click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output.")
 @click.option("--interpreted", is_flag=True, help="Run without compilation; the same results, slower.")
 @click.option("--cache", type=click.Path(path_type=Path), help="Where compiled plants are kept; safe to delete.")
+@click.option("--patience", default=600.0, show_default=True, help="Give a run up after so many seconds of computing.")
 @click.option("--timing", is_flag=True, help="Print how long it took to standard error.")
 def command(
     scenarios: tuple[Path, ...],
@@ -34,6 +35,7 @@ def command(
     as_json: bool,
     interpreted: bool,
     cache: Path | None,
+    patience: float,
     timing: bool,
 ) -> int:
     """Run every strategy of the SCENARIOS (files, or folders that hold them), judge the rules, and compare.
@@ -47,10 +49,10 @@ def command(
     written = None
     if out is not None:
         with RunFolder(out) as folder:
-            report = api.run(scenarios, strategy, chosen, not interpreted, folder.draw)
+            report = api.run(scenarios, strategy, chosen, not interpreted, folder.draw, patience)
             written = folder.finish(report)
     else:
-        report = api.run(scenarios, strategy, chosen, not interpreted)
+        report = api.run(scenarios, strategy, chosen, not interpreted, patience=patience)
     if as_json:
         click.echo(json_text(report.json(written)))
     else:

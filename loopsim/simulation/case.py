@@ -12,7 +12,7 @@ from loopsim.model.rest import OperatingPoint
 from loopsim.model.types import Model
 from loopsim.simulation.actions import free_names
 from loopsim.simulation.conditions import resolve
-from loopsim.simulation.run import RunResult, prepare, program_of, run
+from loopsim.simulation.run import PATIENCE, RunResult, prepare, program_of, run
 
 ROWS = 1000  # recorded rows of a run that does not say how often it records
 
@@ -52,15 +52,17 @@ def text_of(case: Case, judged: Iterable[str]) -> str:
     return program_of(case.model, case.scenario, _judged(case, judged), recorded_names(case))[1].text
 
 
-def run_case(case: Case, judged: Iterable[str], number: int = 0, native: bool = True) -> RunResult:
-    """The run of a case; `judged` are names as people write them, unknown ones left out."""
+def run_case(
+    case: Case, judged: Iterable[str], number: int = 0, native: bool = True, patience: float = PATIENCE
+) -> RunResult:
+    """The run of a case; `judged` are names as people write them, unknown ones left out; `patience` as in `run`."""
     scenario = case.scenario
     lasts = to_si(scenario.lasts.value, scenario.lasts.unit) if scenario.lasts.unit else scenario.lasts.value
     every = lasts / ROWS
     if scenario.record_every is not None and scenario.record_every.unit is not None:
         every = to_si(scenario.record_every.value, scenario.record_every.unit)
     wanted, recorded = _judged(case, judged), recorded_names(case)
-    return run(prepare(case.model, case.law, case.point, scenario, wanted, recorded, number, native), every)
+    return run(prepare(case.model, case.law, case.point, scenario, wanted, recorded, number, native), every, patience)
 
 
 def _judged(case: Case, names: Iterable[str]) -> dict[str, str]:

@@ -33,6 +33,7 @@ CAPACITY = 2000  # pieces that the engine can hold before they are put aside
 STEPS = 20000  # steps of one call of the engine
 RELATIVE = 1e-8  # default tolerance of a step
 MOST_STEPS = 50_000_000
+MOST_KEPT = 200_000_000  # numbers of all pieces of a run, 1.6 GB
 MOST_IMPLICIT = 60  # states: with more of them the implicit method's full matrices cost more than they save
 # kinds of the arguments of what is compiled: f number, i whole number, F and I arrays of them, P array of arrays
 STATE = ("F", "I", "F", "F", "F", "F", "F", "I", "F", "P", "F", "F")
@@ -255,13 +256,15 @@ def advance(machine: Machine, state: RunState, until: float, enough: Callable[[]
         _keep_rows(machine, state, rows)
         if state.n[4] and math.isnan(state.reversed_at):
             state.reversed_at = state.t
+        if status not in (1, 4):
+            break
         if status == 1:
             put_aside(machine, state)
             arguments[6] = state.h
-        elif status == 4 and (enough() or state.j[0] > MOST_STEPS):
+        if enough() or state.j[0] > MOST_STEPS:
             return Outcome("budget", "the run takes too long; it was given up")
-        elif status != 4:
-            break
+        if sum(chunk.size for chunk in state.pieces) > MOST_KEPT:
+            return Outcome("budget", "the run is too long to be kept at full resolution; it was given up")
     if status == 0:
         return Outcome("reached")
     if status == 6:

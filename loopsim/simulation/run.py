@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import heapq
 import math
+import time
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from functools import lru_cache
@@ -31,6 +32,7 @@ from loopsim.simulation.starts import start_values
 MARK = "mark"  # among the pending: an event happens, to be noted
 ARMED = "armed"  # among the pending: a condition has held long enough once this time comes
 LOGGED = 200  # changes of one on/off signal that the log holds
+PATIENCE = 600.0  # s: computing that one run may take
 CROWD = 1000  # conditions may start each other this often in one instant
 
 
@@ -225,8 +227,12 @@ def _sentence(event: Event) -> str:
 
 
 # ---------------------------------------------------------------- the run
-def run(simulation: Simulation, every: float) -> RunResult:
-    """Advance to the end of the scenario; trends are recorded every `every` seconds."""
+def run(simulation: Simulation, every: float, patience: float = PATIENCE) -> RunResult:
+    """Advance to the end of the scenario; trends are recorded every `every` seconds.
+
+    `patience` [s] is how long the computing may take before the run is given up.
+    """
+    deadline = time.monotonic() + patience
     if not simulation.pending or simulation.pending[0][0] > 0:
         _queue(simulation, [Action(0.0, -1, "", None)])
     status = Status("done")
@@ -244,7 +250,7 @@ def run(simulation: Simulation, every: float) -> RunResult:
         if now >= simulation.lasts - _tie(now):
             break
         until = min(simulation.pending[0][0] if simulation.pending else math.inf, simulation.lasts)
-        outcome = advance(simulation.machine, simulation.state, until)
+        outcome = advance(simulation.machine, simulation.state, until, lambda: time.monotonic() > deadline)
         status = _outcome(simulation, outcome)
     return _result(simulation, status)
 
