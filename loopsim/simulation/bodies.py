@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass, replace
+from pathlib import Path
 
 from loopsim.errors import Where
 from loopsim.language.tree import Expression, Name, names_in, parts
@@ -177,7 +178,7 @@ class Bodies:
             if self.behind(step.name) != step.name:
                 return []
             text = writer.value(self.analysis.trees[step.name])
-            return [*writer.take(), f"{self.read(step.name)} = {text}  # {step.name}: {_place(step.where)}"]
+            return [*writer.take(), f"{self.read(step.name)} = {text}  # {step.name}: {place_text(step.where)}"]
         if isinstance(step, DeadTime):
             return [*self._dead_time_lines(step, writer)]
         if isinstance(step, Noise):
@@ -216,5 +217,6 @@ def _states_first(model: Model) -> list[str]:
     return [name for name in model.states if name not in swept] + [name for name in model.states if name in swept]
 
 
-def _place(where: Where) -> str:
-    return f"{where.file}:{where.line}"
+def place_text(where: Where) -> str:
+    """File and line, without where on this machine the file lies."""
+    return f"{'/'.join(Path(where.file).parts[-2:])}:{where.line}"

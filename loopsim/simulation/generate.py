@@ -10,7 +10,7 @@ from loopsim.language.tree import Expression, names_in
 from loopsim.model.order import Loop, Step
 from loopsim.model.types import PRIME, Assignment, Latch, Model, ScanLatch, ScanTask
 from loopsim.simulation.analysis import Wishes, switch_numbers
-from loopsim.simulation.bodies import ARRAYS, Bodies, Program
+from loopsim.simulation.bodies import ARRAYS, Bodies, Program, place_text
 from loopsim.simulation.loops import loop_functions
 from loopsim.simulation.slopes import slopes_functions
 from loopsim.simulation.text import Writer, number_text
@@ -126,7 +126,7 @@ def _rates(bodies: Bodies) -> str:
     for name, place in bodies.states.items():
         text = writer.value(bodies.rates[name])
         where = bodies.model.states[name].where
-        lines += [*writer.take(), f"dx[{place}] = {text}  # d {name}/dt: {where.file}:{where.line}"]
+        lines += [*writer.take(), f"dx[{place}] = {text}  # d {name}/dt: {place_text(where)}"]
     return bodies.function(f"rates(t, side, {ARRAYS}, dx)", lines)
 
 
@@ -285,7 +285,7 @@ def _since_previous(bodies: Bodies, task: ScanTask) -> list[str]:
 def _statement(bodies: Bodies, one: Assignment | ScanLatch, writer: Writer) -> list[str]:
     if isinstance(one, Assignment):
         text = writer.value(one.tree)
-        return [*writer.take(), f"{bodies.read(one.name)} = {text}  # {one.where.file}:{one.where.line}"]
+        return [*writer.take(), f"{bodies.read(one.name)} = {text}  # {place_text(one.where)}"]
     test = writer.condition(one.condition)
     value = "t" if one.argument is None else writer.value(one.argument)
     start, active = (f"m[{bodies.memory[slot]}]" for slot in one.slots)
