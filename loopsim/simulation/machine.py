@@ -205,9 +205,9 @@ def start(
 
 def _work(machine: Machine) -> tuple[list[list[float]], list[float], list[float]]:
     """Work arrays: stages and states, w, samples, switch marks, a row, rates and states on a tie, facts of the try
-    (span of a tie, method, stiffness, method tried), matrices and more of the implicit method; then g and c."""
+    (span of a tie, method, method tried), matrices and more of the implicit method; then g and c."""
     sizes = machine.module
-    widths = [*([sizes.NX] * 10), sizes.NW, 5 * sizes.NW, sizes.NB, sizes.NR, sizes.NX, sizes.NX, sizes.NX, 4]
+    widths = [*([sizes.NX] * 10), sizes.NW, 5 * sizes.NW, sizes.NB, sizes.NR, sizes.NX, sizes.NX, sizes.NX, 3]
     square = sizes.NX**2 if sizes.IMPLICIT else 0
     widths += [square, square, sizes.NX, sizes.NX, sizes.NX]
     f = [_array(machine, [0.0] * width) for width in widths]

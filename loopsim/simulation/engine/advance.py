@@ -92,7 +92,7 @@ def commit(t, step, at_boundary, x, m, p, b, h, n, z, f, rows, j, e):
         x[i] = new[i]
         k1[i] = k7[i]
     j[0] = j[0] + 1
-    j[6] = 1 if f[17][3] > 0.5 else 0
+    j[6] = 1 if f[17][2] > 0.5 else 0
     return 0.0
 
 
@@ -245,11 +245,14 @@ def advance(until, budget, e, j, x, m, p, b, h, n, z, f, g, c, q, period, phase,
                 return status
             continue
         proposal = next_step(e[7], error, e, j)
+        watch = 1 if j[14] == 1 or j[10] == 0 else 0
+        fast = stiffness(e[7], x, f) if watch == 1 and j[14] == 0 and n[7] == 0 else 0.0
         share = first_stop(t, e[7], j, x, m, p, b, h, n, z, f, g, c, pending, waiting)
         status = take_step(share, limit, until, e, j, x, m, p, b, h, n, z, f, g, q, rows)
         e[1] = proposal
-        choose_method(e[0] - t, e, j, f)
-        f[17][1] = 1.0 * j[14]
+        if watch == 1:
+            choose_method(e[0] - t, fast, e, j)
+            f[17][1] = 1.0 * j[14]
         if status > 0:
             return status
     return 0

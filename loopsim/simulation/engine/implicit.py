@@ -201,8 +201,9 @@ def dense_implicit(share, x, f, y):
     return 0.0
 
 
-def choose_method(step, e, j, f):
-    # after a step: the implicit method where stability holds up the other one, as long as it gets on so much faster
+def choose_method(step, fast, e, j):
+    # after a step: the implicit method where stability holds up the other one, as long as it gets on so much faster.
+    # `fast` is the step times the fastest slope; steps that a boundary cut short say nothing of the method
     e[8] = e[8] + step
     j[16] = j[16] + 1
     if j[14] == 1:
@@ -216,7 +217,7 @@ def choose_method(step, e, j, f):
             e[8] = 0.0
             j[16] = 0
         return 0.0
-    if f[17][2] > 3.25:
+    if fast > 3.25:
         j[15] = j[15] + 1
         if j[15] >= 15 and j[0] >= j[18] and IMPLICIT == 1:
             e[9] = e[8] / j[16]

@@ -42,9 +42,9 @@ def field(t, side, x, m, p, b, h, n, z, f, g, dx):
 
 def attempt(t, step, fresh, x, m, p, b, h, n, z, f, g, q):
     # one try from t over `step`; f holds the work arrays one after the other, q the tolerances; returns the error norm
-    f[17][3] = 0.0
+    f[17][2] = 0.0
     if f[17][1] > 0.5 and n[7] == 0:
-        f[17][3] = 1.0
+        f[17][2] = 1.0
         return attempt_implicit(t, step, x, m, p, b, h, n, z, f, q)
     k1 = f[0]
     k2 = f[1]
@@ -69,12 +69,16 @@ def attempt(t, step, fresh, x, m, p, b, h, n, z, f, g, q):
     field(t + step, -1, y, m, p, b, h, n, z, f, g, k6)
     stage_7(x, k1, k3, k4, k5, k6, step, new)
     field(t + step, -1, new, m, p, b, h, n, z, f, g, k7)
-    f[17][2] = stiffness(step, y, new, k6, k7)
     return error_norm(x, new, k1, k3, k4, k5, k6, k7, step, q)
 
 
-def stiffness(step, y, new, k6, k7):
-    # the step times the fastest slope, from two stages at the same instant: Hairer, Wanner II, IV.2
+def stiffness(step, x, f):
+    # the step just tried times the fastest slope, from two stages at the same instant: Hairer, Wanner II, IV.2
+    new = f[8]
+    k6 = f[5]
+    k7 = f[6]
+    y = f[9]
+    stage_6(x, f[0], f[1], f[2], f[3], f[4], step, y)
     above = 0.0
     below = 0.0
     for i in range(NX):
@@ -85,7 +89,7 @@ def stiffness(step, y, new, k6, k7):
 
 def dense(share, step, x, f, y):
     # the states at a share of the step just tried
-    if f[17][3] > 0.5:
+    if f[17][2] > 0.5:
         return dense_implicit(share, x, f, y)
     return dense_explicit(share, step, x, f, y)
 
