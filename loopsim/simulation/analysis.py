@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from loopsim.errors import Where
-from loopsim.language.tree import Call, Expression, Name, Number, Operation, names_in, parts, rebuild
+from loopsim.language.tree import Call, Expression, Name, Number, Operation, names_in, parts, rebuild, transform
 from loopsim.model.order import Loop, Step, ordered, statement_names
 from loopsim.model.types import Assignment, DeadTime, Latch, Model, Noise
 from loopsim.simulation.switches import Switches, moving_names
@@ -141,6 +141,20 @@ class Analysis:
             name = self._name_of_settled(tree)
             return Name(name)
         return rebuild(tree, tuple(self.hoisted(part) for part in parts(tree)))
+
+    def by_reciprocals(self, tree: Expression) -> Expression:
+        """A readied tree that multiplies by reciprocals, told once, where it would divide by settled names."""
+
+        def turned(node: Expression) -> Expression:
+            if not isinstance(node, Operation) or node.operator != "/":
+                return node
+            above, below = node.arguments
+            if not isinstance(below, Name) or not self.is_settled(below.name) or isinstance(above, Number):
+                return node
+            reciprocal = Name(self._name_of_settled(Operation("/", (Number(1.0), below))))
+            return Operation("*", (above, reciprocal), node.at)
+
+        return transform(tree, turned)
 
     def _name_of_settled(self, tree: Expression) -> str:
         for name, known in self.settled.items():

@@ -63,7 +63,8 @@ class Bodies:
         self.noises = list(model.noises)
         self.tables = {name: str(number) for number, name in enumerate(model.tables)}
         self.watched = self._watched_names()
-        self.rates = self._readied({name: one.rate for name, one in model.states.items()})
+        rates = self._readied({name: one.rate for name, one in model.states.items()})
+        self.rates = {name: self.analysis.by_reciprocals(tree) for name, tree in rates.items()}
         self.arguments = self._readied({name: one.argument for name, one in model.dead_times.items()})
         self._place_parameters()
 

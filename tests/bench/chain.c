@@ -10,23 +10,23 @@
 #define NX (N + 2)
 static const double rho = 998.0, cp = 4182.0, UA_t = 40.0, T_amb = 293.15, power = 250e3, C = 60e3, UA = 6e3, lag = 20.0;
 static const double low = 273.15, high = 373.15, Kc = 2.0, Ti = 900.0, Ts = 0.5, sp = 318.15;
-static double qin, warm[N], cap[N], out, I, last_scan, x0[NX];
+static double qin, warm[N], less[N], out, I, last_scan, x0[NX];
 
 static inline void rates(const double *restrict x, double *restrict dx) {
     double heat = UA * (x[N] - x[0]);
-    dx[0] = (((warm[0] * ((12.0 + 273.15) - x[0])) + heat) - (UA_t * (x[0] - T_amb))) / cap[0];
-    for (int i = 1; i < N; i++) dx[i] = (((warm[i] * (x[i - 1] - x[i])) + 0.0) - (UA_t * (x[i] - T_amb))) / cap[i];
+    dx[0] = (((warm[0] * ((12.0 + 273.15) - x[0])) + heat) - (UA_t * (x[0] - T_amb))) * less[0];
+    for (int i = 1; i < N; i++) dx[i] = (((warm[i] * (x[i - 1] - x[i])) + 0.0) - (UA_t * (x[i] - T_amb))) * less[i];
     double duty = out > 1.0 ? 1.0 : out;
     duty = duty < 0.0 ? 0.0 : duty;
-    dx[N] = ((power * duty) - heat) / C;
-    dx[N + 1] = (x[N - 1] - x[N + 1]) / lag;
+    dx[N] = ((power * duty) - heat) * (1.0 / C);
+    dx[N + 1] = (x[N - 1] - x[N + 1]) * (1.0 / lag);
 }
 
 static void flow(double q) {
     qin = q;
     for (int i = 0; i < N; i++) {
         warm[i] = (rho * cp) * q;
-        cap[i] = (rho * cp) * (0.3 + 0.01 * (i + 1));
+        less[i] = 1.0 / ((rho * cp) * (0.3 + 0.01 * (i + 1)));
     }
 }
 
