@@ -26,7 +26,7 @@ static void flow(double q) {
     qin = q;
     for (int i = 0; i < N; i++) {
         warm[i] = (rho * cp) * q;
-        less[i] = 1.0 / ((rho * cp) * (0.3 + 0.01 * (i + 1)));
+        less[i] = 1.0 / ((rho * cp) * ((20.0 + (i + 1)) / 64.0));
     }
 }
 
