@@ -135,7 +135,7 @@ def _without_value(path: Path | None) -> float | None:
 
 def _verdict(rule: Rule, finding: Finding, open_because: str) -> Verdict:
     """A finding as a verdict: broken is failed; kept is passed unless something leaves it open."""
-    if finding.passed is False:
+    if finding.passed is not None and not finding.passed:
         verdict, reason = FAILED, finding.reason
     elif finding.passed is None or open_because:
         verdict, reason = INCONCLUSIVE, finding.reason or open_because

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from loopsim.documents.types import Quantity, Rule
 from loopsim.language.units import Unit, difference_of, to_si
@@ -83,7 +83,7 @@ class Finding:
 
 def on_or_under(value: float, limit: float) -> bool:
     """Whether a size keeps below a limit, on the limit being passed: value <= limit * (1 + 1e-9)."""
-    return value <= limit * (1 + ROUNDING)
+    return bool(value <= limit * (1 + ROUNDING))  # numpy's own truth values are not True and False
 
 
 def share_left(value: float, limit: float) -> float:
@@ -151,7 +151,8 @@ def _settled(case: Case, dwell: float) -> Finding:
     outside = stays_outside(error, case.limit * (1 + ROUNDING))
     for stay in _gaps(outside, frame.after, end):
         if stay.begin <= frame.begin and stay.end - stay.begin >= dwell * (1 - ROUNDING):
-            return _inside(case, between(error, stay.begin, stay.begin + dwell))
+            found = _inside(case, between(error, stay.begin, stay.begin + dwell))
+            return replace(found, passed=True, reason="")  # its ends lie on the limit, to the last bit or one beyond
     judged = between(error, frame.begin, min(frame.begin + dwell, end), closing=True)
     unit = case.rule.limit.unit if case.rule.limit else case.unit
     if not len(judged):

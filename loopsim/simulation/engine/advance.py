@@ -1,12 +1,13 @@
 # Restricted Python: from boundary to boundary. See DEVELOPERS.md, "The generated text".
 # e: floats - 0 time, 1 proposed step, 2 record interval (0: none), 3 time of the last flips, 4 of the last flip of the
 #    switch in j[8], 5 last step that ended without a flip,
-#    6 span over which a tie is looked at, 7 the step to try, 8 and 9 see choose_method, 16 + k last execution of task k
+#    6 span over which a tie is looked at, 7 the step to try, 8 and 9 see choose_method, 10 the step to try
+#    first after a boundary, where something may have jumped, 16 + k last execution of task k
 # n[7]: 1 + the switch that rests on its tie, 0 for none
 # j: ints - 0 steps, 1 rejections, 2 flips at one place, 3 number of the next row, 4 rows written, 5 index that a status
 #    speaks of, 6 rates at t are stale, 7 the state at t is a boundary still to be carried out, 8 and 9 the switch that turned last and how often
 #    at one place, 10 the step ends at a boundary, 11 to 13 see first_stop, 14 the method (1: implicit), 15 to 18 see
-#    choose_method
+#    choose_method, 19 a boundary has just been carried out
 # Statuses: 0 reached, 1 pieces full, 2 step too small, 3 not finite, 4 steps used up, 5 equation unsolved, 6 condition,
 # 7 chatter
 
@@ -75,6 +76,7 @@ def carry_out(event, e, j, x, m, p, b, h, n, z, f, g, c, period, phase, every, s
         drop_echoes(t, x, m, p, b, h, n, z, c, pending, waiting)
     j[6] = 1
     j[7] = 0
+    j[19] = 1
     if e[2] > 0.0 and abs(j[3] * e[2] - t) <= tie_of(t):
         write_row(t, 1, x, m, p, b, h, n, z, f, rows, j)
     return turned
@@ -99,6 +101,8 @@ def commit(t, step, at_boundary, x, m, p, b, h, n, z, f, rows, j, e):
 def first_step(t, limit, e, j, c):
     # the step to try, into e[7]; j[10] tells whether it ends at the next boundary
     step = e[1]
+    if j[19] == 1 and e[10] > 0.0:
+        step = smaller(step, e[10])
     if ND > 0:
         lag = shortest_lag(t, c)
         # a lag far below the step is left to the repetition in step_with_history
@@ -120,6 +124,8 @@ def refuse(t, step, error, e, j, n):
     if error > 1.0 and error < 1e8:
         shrink = greater(0.9 * power(error, -0.2), 0.2)
     e[1] = step * shrink
+    if j[19] == 1:
+        e[10] = e[1]
     if e[1] >= smallest(t):
         return 0
     j[5] = n[1]
@@ -134,6 +140,9 @@ def next_step(step, error, e, j):
     if error > 1e-4:
         grow = 0.9 * power(error, -0.2)
     proposal = step * grow
+    if j[19] == 1:
+        e[10] = proposal
+        j[19] = 0
     if j[10] == 1 and proposal < e[1] and grow >= 1.0:
         proposal = e[1]
     return proposal
