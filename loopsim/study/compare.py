@@ -11,7 +11,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 
 from loopsim.study.structure import Sight, sights, structure_of
-from loopsim.study.types import FAILED, INCONCLUSIVE, PASSED, Comparison, Judged, Standing, Verdict
+from loopsim.study.types import FAILED, INCONCLUSIVE, NOT_APPLICABLE, PASSED, Comparison, Judged, Standing, Verdict
 from loopsim.study.words import listed, rounded
 
 TIE = 0.01
@@ -42,17 +42,19 @@ def compare(judged: Sequence[Judged]) -> Comparison:
 def _standing(name: str, ones: Sequence[Judged]) -> Standing:
     verdicts = [(verdict, one.scenario) for one in ones for verdict in one.verdicts]
     passed, failed, left = (sum(one.verdict == kind for one, _ in verdicts) for kind in (PASSED, FAILED, INCONCLUSIVE))
+    lacking = sum(one.verdict == NOT_APPLICABLE for one, _ in verdicts)
     settled = [(verdict, where) for verdict, where in verdicts if verdict.verdict in (PASSED, FAILED)]
     rated = [(verdict.margin, verdict.rule, where) for verdict, where in settled if verdict.margin is not None]
     if not rated:
-        return Standing(name, passed, failed, left, None)
+        return Standing(name, passed, failed, left, None, lacking=lacking)
     margin, rule, scenario = min(rated, key=lambda one: one[0])
-    return Standing(name, passed, failed, left, margin, rule, scenario)
+    return Standing(name, passed, failed, left, margin, rule, scenario, lacking)
 
 
 def _ranked(standings: Sequence[Standing]) -> tuple[str | None, tuple[str, ...], str | None]:
     """The winner, or those that are tied, or the one that comes nearest."""
-    passing = [one for one in standings if one.passes]
+    fewest = min((one.lacking for one in standings if one.passes), default=0)
+    passing = [one for one in standings if one.passes and one.lacking == fewest]
     if passing:
         top = max(_margin(one) for one in passing)
         best = tuple(one.strategy for one in passing if _margin(one) >= top - TIE)
@@ -89,7 +91,7 @@ def _results(
         spare = _spare(first[tied[0]], many)
         sentences.append(f"{_names(tied)} pass every rule and are tied: each has the same to spare ({spare}).")
     if winner is not None:
-        sentences.append(f"'{winner}' passes every rule; {_spare(first[winner], many)}.")
+        sentences.append(f"'{winner}' passes {_every(first[winner])}; {_spare(first[winner], many)}.")
     if nearest is not None:
         sentences.append(
             f"No strategy passes every rule; {_shortfall(first[nearest], judged[nearest], many, 'comes nearest')}."
@@ -98,10 +100,18 @@ def _results(
         if one.strategy in (winner, nearest, *tied):
             continue
         if one.passes:
-            sentences.append(f"'{one.strategy}' passes every rule too; {_spare(one, many)}.")
+            sentences.append(f"'{one.strategy}' passes {_every(one)} too; {_spare(one, many)}.")
         elif one.passed + one.failed + one.inconclusive:
             sentences.append(f"{_shortfall(one, judged[one.strategy], many)}.")
     return sentences
+
+
+def _every(standing: Standing) -> str:
+    """`every rule`, or those that a strategy can be held to: one that lacks a signal is judged by fewer."""
+    if not standing.lacking:
+        return "every rule"
+    does = "1 rule speaks" if standing.lacking == 1 else f"{standing.lacking} rules speak"
+    return f"every rule that applies to it ({does} of what it does not have, so it was judged by fewer)"
 
 
 def _spare(standing: Standing, many: bool) -> str:

@@ -150,18 +150,21 @@ def _measure_cell(measure: Measure | None) -> Cell:
 # ---------------------------------------------------------------- comparison
 def comparison_table(comparison: Comparison) -> Table:
     """How the strategies stand, with the reasons below."""
+    some = any(one.lacking for one in comparison.standings)
     rows = tuple(
         (
             Cell(one.strategy, "good" if one.strategy == comparison.winner else "plain"),
             Cell(str(one.passed)),
             Cell(str(one.failed), "bad" if one.failed else "plain"),
             Cell(str(one.inconclusive), "open" if one.inconclusive else "plain"),
+            *((Cell(str(one.lacking)),) if some else ()),
             Cell("–" if one.margin is None else f"{rounded(100 * one.margin, 3)} %"),
             Cell(one.tightest),
         )
         for one in comparison.standings
     )
-    heads = ("strategy", "passed", "failed", "inconclusive", "smallest margin", "in rule")
+    missing = ("does not apply",) if some else ()
+    heads = ("strategy", "passed", "failed", "inconclusive", *missing, "smallest margin", "in rule")
     return Table(_title(comparison), heads, rows, comparison.reasons)
 
 

@@ -164,7 +164,8 @@ class Judged:
 class Standing:
     """How one strategy stands over all scenarios: how many rules passed, failed and stayed open.
 
-    `margin` is the smallest margin of all, `tightest` the rule that has it, as text, in the scenario `scenario`.
+    `margin` is the smallest margin of all, `tightest` the rule that has it, as text, in the scenario `scenario`;
+    `lacking` counts the rules that speak of what the strategy does not have.
     """
 
     strategy: str
@@ -174,6 +175,7 @@ class Standing:
     margin: float | None
     tightest: str = ""
     scenario: str = ""
+    lacking: int = 0
 
     @property
     def passes(self) -> bool:

@@ -44,3 +44,27 @@ def test_beyond_the_limit_is_failed(write: Write, rule: str) -> None:
     assert verdict.verdict == RULES[rule], verdict
     assert report.status == (0 if RULES[rule] == "passed" else 1)
     assert verdict.verdict == "failed" or not verdict.reason
+
+
+def test_a_strategy_that_lacks_what_a_rule_speaks_of_does_not_win_by_it(write: Write) -> None:
+    """Both pass all they are judged by; the one that is judged by more comes first, and it is said why."""
+    plant, _, wires = PLANT.partition("  TIC: ")
+    _, _, rest = wires.partition("wires: ")
+    plant += "wires: " + rest.replace(", TT.pv -> TIC.pv, TIC.out -> element.duty", "")
+    loop = (
+        "strategy: loop\nblocks:\n  TIC: "
+        + wires.partition("\n")[0]
+        + "\nwires: [TT.pv -> TIC.pv, TIC.out -> element.duty]\n"
+    )
+    held = "strategy: held\nset: {element.duty: 39.04 %}\n"
+    run = (
+        "scenario: run\nplant: plant.yaml\nstrategies: {held: [held.yaml], loop: [loop.yaml]}\nlasts: 1 h\n"
+        "events: [{at: 2 min, step: tank.T_in, to: 12.5 degC}]\n"
+        "accept:\n  - {signal: tank.T, within: 4 K, of: TIC.sp, after: 2 min}\n  - {signal: tank.T, max: 60 degC, after: 2 min}\n"
+    )
+    files = {"plant.yaml": plant, "held.yaml": held, "loop.yaml": loop, "run.yaml": run}
+    comparison = api.run([write(files) / "run.yaml"]).comparison
+    assert comparison is not None and comparison.winner == "loop"
+    told = " ".join(comparison.reasons)
+    assert "'held' passes every rule that applies to it (1 rule speaks of what it does not have" in told
+    assert "'loop' passes every rule;" in told
