@@ -170,7 +170,8 @@ def _worse(one: Judged, best: Judged) -> bool:
 
 
 def _alike(own: Sequence[Sight], others: Sequence[Sight]) -> bool:
-    return all((other := _same_aim(sight, others)) is None or other.rank == sight.rank for sight in own)
+    pairs = [(sight, _same_aim(sight, others)) for sight in own]
+    return len(own) == len(others) and all(other is not None and other.rank == one.rank for one, other in pairs)
 
 
 def _disturbances(ones: Iterable[Judged]) -> list[str]:
