@@ -78,7 +78,7 @@ def _steady_tables(name: str, found: _Steady) -> list[Table]:
             values = [f"{from_si(one.values[flat], about.unit, model.air_pressure):.5g}" for one in found.rests]
             rows.append(tuple(Cell(text) for text in (signal, *values, about.unit.text, about.about)))
     words = {True: "The point is stable.", False: "The point is NOT stable: left alone, the plant goes away from it.",
-             None: "Stability is not told: a dead time lies in a loop, so it is a question for the roots."}  # fmt: skip
+             None: "Stability is not told: a loop has a dead time, which this version does not compute."}  # fmt: skip
     notes = [one.sentence for one in first.unreached]
     notes += [words[found.stable[0]]] if len(found.rests) == 1 else _stabilities(found.stable)
     notes += [f"assumed: {one}" for one in model.assumed]

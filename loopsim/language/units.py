@@ -325,5 +325,11 @@ def difference_of(unit: Unit) -> Unit:
     return parse_unit(unit.text.partition("(")[0])
 
 
+def times_minute(unit: Unit) -> Unit:
+    """The unit of integrals over time, in a text that can be read back: K*min, min*g/L."""
+    text = f"min*{unit.text}" if "/" in unit.text else f"{unit.text}*min"
+    return Unit(text, 60.0 * unit.factor, 0.0, unit.dimension.multiply(parse_unit("s").dimension))
+
+
 DIMENSIONLESS = Unit("dimensionless", 1.0, 0.0, Dimension())
 PERCENT = Unit("%", 0.01, 0.0, Dimension())

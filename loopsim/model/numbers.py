@@ -109,9 +109,10 @@ class System:
         """Note the ends of a loop's unknowns, where parameters alone tell them."""
         for number, (low, high, stops) in enumerate(loop.limits):
             if low is not None and high is not None:
-                ends = [_by_parameters(self.model, end) for end in (low, high)]
-                place = len(self.unknowns) + number
-                self._brackets.append(Bracket(loop.unknowns[number], place, row + number, ends[0], ends[1], stops))
+                first, last = (_by_parameters(self.model, end) for end in (low, high))
+                if first is not None and last is not None:
+                    place = len(self.unknowns) + number
+                    self._brackets.append(Bracket(loop.unknowns[number], place, row + number, first, last, stops))
 
     def inside(self, u: FloatArray) -> FloatArray:
         """u with every unknown between its ends."""
@@ -212,12 +213,15 @@ class System:
         return np.nan_to_num(u, nan=0.0, posinf=0.0, neginf=0.0)
 
 
-def _by_parameters(model: Model, tree: Expression) -> float:
-    """The value of a tree of slots and of what is computed from them."""
-    known = {
-        name: model.slots[name].value if name in model.slots else _by_parameters(model, model.assignments[name].tree)
-        for name in names_in(tree)
-    }
+def _by_parameters(model: Model, tree: Expression) -> float | None:
+    """The value of a tree of slots and of what is computed from them; None for one that moves with the plant."""
+    known: dict[str, float | Table] = {}
+    for name in names_in(tree):
+        slot, assignment = model.slots.get(name), model.assignments.get(name)
+        found = slot.value if slot else _by_parameters(model, assignment.tree) if assignment else None
+        if found is None:
+            return None
+        known[name] = found
     return float(evaluate(tree, known))
 
 

@@ -140,8 +140,7 @@ class Expressions:
         self.lines.choose(self.condition(node.test), then, otherwise)
         self.lines.begin(then)
         first = self.value(node.body)
-        whole = first.kind == "i"
-        first = first if whole else self.cast(first, "f")
+        first = first if first.kind == "i" else self.cast(first, "f")
         first_end = self.lines.label
         self.lines.go(after)
         self.lines.begin(otherwise)

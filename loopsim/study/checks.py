@@ -7,7 +7,7 @@ from collections.abc import Collection, Mapping, Sequence
 from loopsim.documents.types import Event, Quantity, Rule, Scenario
 from loopsim.errors import Problems, nearest
 from loopsim.language.dimensions import Dimension
-from loopsim.language.units import ATMOSPHERE, Unit, difference_of, parse_unit
+from loopsim.language.units import ATMOSPHERE, Unit, difference_of, parse_unit, times_minute
 from loopsim.model.scales import si_value
 from loopsim.model.types import Model
 from loopsim.simulation.actions import Actions, check_target, lacking, not_applicable, seconds
@@ -136,5 +136,8 @@ def _check_product(limit: Quantity, difference: Unit, sign: str, what: str, prob
     if found == wanted or (limit.unit is None and limit.value == 0):
         return
     plain = difference.text in ("dimensionless", "count", "on/off")
-    time = "min" if plain and sign == "*" else "1/min" if plain else f"{difference.text}{sign}min"
+    if sign == "*":
+        time = "min" if plain else times_minute(difference).text
+    else:
+        time = "1/min" if plain else f"{difference.text}/min"
     problems.add(f"{limit.text} where {what} wants {time}", limit.where, f"write it in {time}")

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from loopsim.documents.types import Rule
-from loopsim.language.units import Unit, difference_of, parse_unit
+from loopsim.language.units import Unit, difference_of, parse_unit, times_minute
 from loopsim.study.path import (
     Path,
     between,
@@ -72,11 +72,7 @@ def _settling(run: Run, loop: Loop, rules: Sequence[Rule], unit: Unit | None) ->
 # ---------------------------------------------------------------- over a stretch
 def _deviation(error: Path, unit: Unit | None) -> tuple[Measure, Measure]:
     peak = farthest(error)
-    product = (
-        Unit(f"{unit.text}*min", 60.0 * unit.factor, 0.0, unit.dimension.multiply(parse_unit("s").dimension))
-        if unit
-        else None
-    )
+    product = times_minute(unit) if unit else None
     return Measure("peak_deviation", peak.value, unit, peak.at), Measure("iae", integral_of_size(error), product)
 
 

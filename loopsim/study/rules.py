@@ -323,7 +323,7 @@ def loop_margins(rule: Rule, known: LoopMargins | None) -> Finding:
 def _one_margin(loop: str, name: str, limit: Quantity, known: LoopMargins | None) -> Finding:
     bound, title = size(limit, None), name.replace("_", " ")
     if known is None:
-        return Finding(None, None, bound, limit.unit, None, "needs the linear side")
+        return Finding(None, None, bound, limit.unit, None, "this version does not compute margins")
     if not known.stable:
         return Finding(False, None, bound, limit.unit, None, f"the closed loop of {loop} is not stable", float("-inf"))
     if name not in known.values:

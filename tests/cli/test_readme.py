@@ -67,6 +67,14 @@ def test_its_message_is_what_is_said(folder: Path, capsys: pytest.CaptureFixture
     assert said and said[1].replace("element.duty", "element.Q") in error
 
 
+def test_its_own_block_agrees_with_its_check(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    (text,) = re.findall(r"`blocks/brine_tank\.yaml`:\n\n```yaml\n(.*?)```", README, re.DOTALL)
+    (folder / "blocks").mkdir()
+    (folder / "blocks" / "brine_tank.yaml").write_text(text)
+    assert status_of(["check", "blocks/brine_tank.yaml"]) == 0
+    assert "1 check agrees" in capsys.readouterr().out
+
+
 def test_every_command_that_it_names_is_there() -> None:
     named: set[str] = set(re.findall(r"(?:`|bin/)loopsim ([a-z]+)", README))
     assert named and named <= set(COMMANDS)

@@ -134,3 +134,10 @@ def test_units_told_without_the_registry_are_those_of_the_registry() -> None:
     """Against pint, which the other units come from."""
     for text in units.PLAIN:
         assert units.parse_unit(text) == units._compound(text)
+
+
+def test_units_of_integrals_can_be_read_back() -> None:
+    for text in ("K", "g/L", "kJ/(kg*K)", "%", "m^3/h"):
+        made = units.times_minute(units.parse_unit(text))
+        read = units.parse_unit(made.text)
+        assert (read.dimension, read.factor) == (made.dimension, pytest.approx(made.factor))

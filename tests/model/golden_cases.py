@@ -133,8 +133,10 @@ CLASSES: dict[str, dict[str, Case]] = {
     },
     "signs": {
         "positive_feedback": loop("reverse", "direct"),
-        "no_effect": loop("TT-1.pv -> TIC-1.pv", "TT-2.pv -> TIC-1.pv\n  - feed_T -> TT-2.T")
-        | {"loop.yaml": LOOP.replace("TT-1.pv -> TIC-1.pv", "TT-2.pv -> TIC-1.pv\n  - feed_T -> TT-2.T").replace("wires:", "  TT-2: {use: temperature_transmitter, range: [0 degC, 100 degC]}\nwires:")},
+        "no_effect": loop(
+            "wires:\n  - TT-1.pv -> TIC-1.pv\n",
+            "  TT-2: {use: temperature_transmitter, range: [0 degC, 100 degC]}\nwires:\n  - TT-2.pv -> TIC-1.pv\n  - feed_T -> TT-2.T\n",
+        ),
         "wrong_feedforward": loop("wires:", "  FY-1: {use: feedforward, gain: 5 %/K, at: 12 degC}\nwires:\n  - feed_T -> FY-1.u\n  - FY-1.out -> TIC-1.ff"),
     },
     "no operating point": {

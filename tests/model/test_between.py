@@ -47,3 +47,15 @@ def test_no_root_between_the_ends_is_told(write: Write, a: str) -> None:
     plant = f"plant: one\nblocks: {{n: {{use: square, a: {a}}}}}\n"
     with pytest.raises(ComputationError, match=r"nothing between its ends solves the equation of 'n\.y'"):
         source(write({"blocks/square.yaml": SQUARE, "plant.yaml": plant})).rested()
+
+
+def test_ends_that_move_with_the_plant_do_no_harm(write: Write) -> None:
+    block = SQUARE.replace(
+        "solve:",
+        "states: {x: {unit: dimensionless, start: 1}}\nlet: {tau: 10 s}\nbalances: {b: tau*dx/dt = a - x}\nsolve:",
+    )
+    files = {
+        "blocks/square.yaml": block.replace("[0, 2]", "[0, 2*x]"),
+        "plant.yaml": "plant: one\nblocks: {n: {use: square, a: 3}}\n",
+    }
+    assert source(write(files)).rested().values["n.y"] == pytest.approx(3**0.5)

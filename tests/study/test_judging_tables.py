@@ -111,7 +111,7 @@ def test_json_is_plain_and_in_the_unit_beside() -> None:
     first, second, *_, last = feedback["rules"]
     assert (first["value"], first["limit"], first["unit"]) == (pytest.approx(55.0), pytest.approx(62.0), "degC")
     assert second["at_s"] == 2700.0 and second["unit"] == "K" and second["verdict"] == "passed"
-    assert last["value"] is None and last["reason"] == "needs the linear side"
+    assert last["value"] is None and last["reason"] == "this version does not compute margins"
     assert text["strategies"]["both"]["rules"][2]["verdict"] == "not_applicable"
     peak = feedback["metrics"]["TIC"]["peak_deviation"]
     assert peak == {"value": pytest.approx(-7.5, abs=1e-6), "unit": "K", "at_s": pytest.approx(1500, abs=0.1)}
@@ -155,7 +155,7 @@ def test_suites_have_a_case_for_each_rule_and_strategy() -> None:
         "passed",
         "failure",
     ]
-    assert suite.cases[4].message == "inconclusive: needs the linear side"
+    assert suite.cases[4].message == "inconclusive: this version does not compute margins"
     assert suite.cases[7].message == "both has no TV.position"
 
 
